@@ -1,0 +1,78 @@
+"""The registry of columns: every column of every table, with its unit and meaning, in file order."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True)
+class Column:
+    """One column of a table."""
+
+    name: str
+    unit: str
+    """Empty for text and pure numbers."""
+    meaning: str
+
+
+def _block(*rows: tuple[str, str, str]) -> tuple[Column, ...]:
+    return tuple(Column(*row) for row in rows)
+
+
+_LEVEL = (
+    ("radical", "", "name from the recipe"),
+    ("level", "", "level id, such as UHF/pcH-1, or the level's own name"),
+)
+_METHOD = (
+    *_LEVEL,
+    ("scf", "", "UHF, ROHF, UKS or ROKS"),
+    ("functional", "", "density functional; empty for UHF and ROHF"),
+    ("basis", "", "basis set"),
+)
+_FLAGS = ("flags", "", "codes of the flags that touch this row, joined by ;")
+
+TABLES: dict[str, tuple[Column, ...]] = {
+    "couplings": _block(
+        *_METHOD,
+        ("atom", "", "element and 1-based place in structure.xyz"),
+        ("isotope", "", "isotope whose moment is used"),
+        ("group", "", "group of equivalent nuclei, called by its first atom"),
+        ("group_size", "", "number of nuclei in the group"),
+        (
+            "spin_density_au",
+            "bohr^-3",
+            "alpha minus beta density at the nucleus for M_S = S, not divided by 2S",
+        ),
+        ("a_iso_MHz", "MHz", "isotropic hyperfine coupling, signed"),
+        ("a_iso_mT", "mT", "the same in field units at g_e"),
+        ("a_group_mT", "mT", "mean over the group, the value that an averaged spectrum shows"),
+        _FLAGS,
+    ),
+    "states": _block(
+        *_METHOD,
+        ("basis_functions", "", "number of basis functions"),
+        ("energy_Eh", "Eh", "total energy"),
+        ("s_squared", "", "<S^2> of the determinant"),
+        ("s_squared_exact", "", "S(S+1)"),
+        ("contamination", "", "s_squared - s_squared_exact"),
+        ("converged", "", "true if the self-consistent field converged"),
+        ("stable", "", "true if no nearby lower solution exists; empty if not tested"),
+        ("iterations", "", "iterations of the original calculation"),
+        ("wall_s", "s", "wall time of the original calculation"),
+        _FLAGS,
+    ),
+    "flags": _block(
+        *_LEVEL,
+        ("atom", "", "atom that the flag belongs to; empty for the whole level"),
+        ("code", "", "short name of the finding"),
+        ("severity", "", "note, caution or bad"),
+        ("value", "", "what was found"),
+        ("limit", "", "where the finding begins"),
+        ("advice", "", "what it means and what to do"),
+    ),
+}
+
+
+def names(table: str) -> tuple[str, ...]:
+    """Column names of a table, in file order."""
+    return tuple(column.name for column in TABLES[table])

@@ -1,0 +1,1 @@
+"""Plots, drawn with matplotlib, readable in grey."""

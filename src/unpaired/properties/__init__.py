@@ -1,0 +1,1 @@
+"""Numbers from finished wavefunctions, with numpy alone."""

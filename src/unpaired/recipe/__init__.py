@@ -1,0 +1,1 @@
+"""Recipes - YAML with line numbers, read strictly, understood as a whole."""

@@ -1,0 +1,1 @@
+"""Line positions and curves of isotropic spectra."""

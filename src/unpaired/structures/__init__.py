@@ -1,0 +1,1 @@
+"""Where molecules come from, and which of their nuclei are equivalent."""
