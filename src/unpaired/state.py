@@ -32,7 +32,8 @@ class Solution:
     @property
     def density_matrices(self) -> NDArray[np.float64]:
         """Alpha and beta, shape (2, basis functions, basis functions)."""
-        return np.einsum("smi,si,sni->smn", self.orbitals, self.occupations, self.orbitals)
+        occupied = self.orbitals * self.occupations[:, None, :]
+        return np.asarray(occupied @ self.orbitals.transpose(0, 2, 1))
 
     @property
     def spin_density_matrix(self) -> NDArray[np.float64]:

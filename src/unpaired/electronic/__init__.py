@@ -1,1 +1,1 @@
-"""The only package that imports PySCF beside the catalogue."""
+"""Self-consistent fields through PySCF: the only package beside the catalogue that imports it."""

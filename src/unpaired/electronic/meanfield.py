@@ -1,0 +1,30 @@
+"""PySCF's mean-field object for a level: method, functional, fitting, grid, continuum."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from ..level import Level
+from ..point import Solvent
+from .settings import Settings
+
+
+def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Settings) -> Any:
+    """An unconverged mean-field object. Fitting comes before the continuum: the other order refuses gradients."""
+    from pyscf import dft, scf
+
+    kinds = {"UHF": scf.UHF, "ROHF": scf.ROHF, "UKS": dft.UKS, "ROKS": dft.ROKS}
+    field = kinds[level.scf](mole)
+    if level.is_kohn_sham:
+        field.xc = level.functional
+        field.grids.level = settings.grid_level
+    if settings.fitting_set is not None:
+        field = field.density_fit(auxbasis=settings.fitting_set)
+    if solvent is not None:
+        field = field.PCM()
+        field.with_solvent.method = "IEF-PCM"
+        field.with_solvent.eps = solvent.dielectric
+    field.conv_tol = settings.energy_tolerance_Eh
+    field.conv_tol_grad = settings.gradient_tolerance
+    field.max_cycle = settings.max_iterations
+    return field
