@@ -1,1 +1,1 @@
-"""Where molecules come from, and which of their nuclei are equivalent."""
+"""Structures: reading, writing, building and judging them, and which of their nuclei are equivalent."""
