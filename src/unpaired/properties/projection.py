@@ -2,7 +2,7 @@
 
 Loewdin's projector (P.-O. Loewdin, Phys. Rev. 97, 1509 (1955), from memory) as an integral over rotations b
 about the y axis: with x = cos b the part of spin s of a determinant with M_S = S has the weight
-(2s+1)/2 int dx d^s_SS(b) W(b), where W(b) = <determinant|exp(-i b S_y)|determinant>. In corresponding orbitals
+(2s+1)/2 int dx d^s_SS(b) W(b), W(b) = <determinant|exp(-i b S_y)|determinant>. In corresponding orbitals
 with overlaps d_i every factor is a polynomial in p = cos^2(b/2) and q = 1 - p: W = p^S prod_i (p + q d_i^2).
 The projected one-electron density follows in the same way, so that Gauss-Legendre quadrature with enough
 points is exact.
