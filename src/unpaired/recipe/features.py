@@ -1,0 +1,30 @@
+"""Keys that are understood but whose feature has not been built yet: refused with a sentence that says so.
+
+Delete a line when the feature lands; nothing else needs to change here.
+"""
+
+from __future__ import annotations
+
+NOT_BUILT: dict[str, str] = {
+    "structure.smiles": "starting from SMILES",
+    "relax": "relaxing the structure",
+    "motion.rotors": "leaving freely turning groups frozen",
+    "motion.inversion": "averaging over inversion",
+    "motion.torsion": "averaging over torsion",
+    "motion.vibration": "averaging over vibration",
+    "levels.solution": "asking for one of several solutions",
+}
+"""What each feature does, by the key that asks for it."""
+
+INSTEAD: dict[str, str] = {
+    "structure.smiles": "give a structure file",
+    "relax": "leave the key out and give a relaxed structure file",
+}
+
+
+def not_built(feature: str) -> str | None:
+    """The sentence that refuses a feature, or None if the feature is there."""
+    if feature not in NOT_BUILT:
+        return None
+    instead = INSTEAD.get(feature, "leave the key out")
+    return f"is understood, but {NOT_BUILT[feature]} has not been built yet in this version; {instead}"
