@@ -1,6 +1,6 @@
 """Isotopes with a nuclear spin: spin, magnetic moment, abundance, mass, quadrupole moment.
 
-The numbers stand in data/nuclei.csv, which says row by row where a moment was read. The table goes from hydrogen
+The numbers stand in data/nuclei.csv, which says row by row where a moment was read. It goes from hydrogen
 to krypton and holds every natural isotope with a spin, and 3H.
 """
 
@@ -17,8 +17,9 @@ from .errors import ChoiceError, nearest
 from .molecule import ATOMIC_NUMBER
 
 ISOTOPE_EDITION = (
-    "magnetic moments: N. J. Stone, INDC(NDS)-0794 (2019) and CODATA 2022 for the light nuclei that say so, mendeleev "
-    "1.3.0 for the others; quadrupole moments and masses: mendeleev 1.3.0; abundances: IUPAC 2013, from memory"
+    "magnetic moments: N. J. Stone, INDC(NDS)-0794 (2019) and CODATA 2022 for the nuclei that say so, "
+    "mendeleev 1.3.0 for the others; quadrupole moments and masses: mendeleev 1.3.0, four quadrupole moments "
+    "from memory; abundances: IUPAC 2013, from memory"
 )
 """What the table was made from; `unpaired nuclei` prints the source of every row."""
 

@@ -1,0 +1,5 @@
+"""`python -m unpaired` is the command `unpaired`."""
+
+from .cli import main
+
+main()
