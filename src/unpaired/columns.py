@@ -76,3 +76,17 @@ TABLES: dict[str, tuple[Column, ...]] = {
 def names(table: str) -> tuple[str, ...]:
     """Column names of a table, in file order."""
     return tuple(column.name for column in TABLES[table])
+
+
+def markdown() -> str:
+    """Every table's columns as markdown, for the README: `python -m unpaired.columns`."""
+    text = []
+    for table, block in TABLES.items():
+        text.append(f"**{table}.csv**\n\n| column | unit | meaning |\n| --- | --- | --- |")
+        text += [f"| `{column.name}` | {column.unit} | {column.meaning} |" for column in block]
+        text.append("")
+    return "\n".join(text)
+
+
+if __name__ == "__main__":
+    print(markdown(), end="")

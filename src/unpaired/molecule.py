@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike, NDArray
 from .constants import BOHR_ANGSTROM
 from .errors import StructureError
 
-SYMBOLS = (
+SYMBOLS = (  # noqa: SIM905 (a list of 86 lines reads no better)
     "H He Li Be B C N O F Ne Na Mg Al Si P S Cl Ar K Ca Sc Ti V Cr Mn Fe Co Ni Cu Zn Ga Ge As Se Br Kr "
     "Rb Sr Y Zr Nb Mo Tc Ru Rh Pd Ag Cd In Sn Sb Te I Xe Cs Ba La Ce Pr Nd Pm Sm Eu Gd Tb Dy Ho Er Tm Yb Lu "
     "Hf Ta W Re Os Ir Pt Au Hg Tl Pb Bi Po At Rn"

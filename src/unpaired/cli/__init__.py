@@ -15,7 +15,10 @@ from typing import ParamSpec
 import typer
 
 from ..errors import CalculationError, UnpairedError
+from .check import check
 from .nuclei import nuclei
+from .run import run
+from .table import table
 
 _Parameters = ParamSpec("_Parameters")
 
@@ -57,7 +60,7 @@ def _with_exit_status(command: Callable[_Parameters, None]) -> Callable[_Paramet
     return run
 
 
-for _command in (nuclei,):
+for _command in (run, check, table, nuclei):
     app.command()(_with_exit_status(_command))
 
 

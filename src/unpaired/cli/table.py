@@ -1,0 +1,40 @@
+"""unpaired table: finished runs as one tidy table."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+from typing import Annotated
+
+import typer
+
+
+def table(
+    results: Annotated[list[Path], typer.Argument(metavar="RESULT...", help="Folders that runs left.")],
+    of: Annotated[str, typer.Option("--of", help="Which table: couplings, states, flags, ...")] = "couplings",
+    format: Annotated[str | None, typer.Option(help="csv, markdown, json or parquet.")] = None,
+    output: Annotated[Path | None, typer.Option(help="File to write; its ending tells the format.")] = None,
+) -> None:
+    """Collect finished runs into one tidy table."""
+    from ..columns import names
+    from ..errors import ChoiceError, InputError, nearest
+    from ..files import write_atomically
+    from ..result import load_result
+    from ..tables import FORMATS, collect
+
+    endings = {".csv": "csv", ".md": "markdown", ".json": "json", ".parquet": "parquet"}
+    form = format or (endings.get(output.suffix.lower()) if output else "csv")
+    if form is None:
+        raise InputError(f"{output}: the ending tells no format; use {', '.join(endings)} or give --format")
+    if form not in FORMATS:
+        raise ChoiceError(
+            f'--format: "{form}" does not exist{nearest(form, FORMATS)} (there are {", ".join(FORMATS)})'
+        )
+    if form == "parquet" and output is None:
+        raise InputError("--format parquet: is not text, give --output FILE.parquet")
+    rows = collect([load_result(path) for path in results], of)
+    content = FORMATS[form](rows, names(of))
+    if output is not None:
+        write_atomically(output, content)
+    else:
+        sys.stdout.write(str(content))

@@ -1,0 +1,165 @@
+"""Findings about a state and its couplings: each a Flag with value, limit and advice."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from . import catalogue
+from .constants import mT_from_MHz
+from .flag import Flag, Severity
+from .point import Point
+from .state import State
+from .structures.groups import Group
+from .tight import tightness
+
+# Limits of D = <S^2> - S(S+1) for a doublet: UHF ok < 0.02, caution < 0.10; Kohn-Sham ok < 0.02, caution < 0.05.
+CONTAMINATION_CAUTION = 0.02
+CONTAMINATION_BAD = {"UHF": 0.10, "UKS": 0.05}
+SYMMETRY_TOLERANCE_MT = 0.02
+SYMMETRY_TOLERANCE_SHARE = 0.02
+HEAVY_CAUTION = 18
+HEAVY_BAD = 36
+
+
+def contamination(state: State, point: Point) -> float:
+    """<S^2> - S(S+1)."""
+    spin = point.molecule.spin
+    return state.s_squared - spin * (spin + 1)
+
+
+def contamination_flags(state: State, point: Point) -> list[Flag]:
+    """Spin contamination of an unrestricted state against the band of its method."""
+    level = point.level
+    if not level.is_unrestricted:
+        return []
+    value = contamination(state, point)
+    bad = CONTAMINATION_BAD[level.scf]
+    if value < CONTAMINATION_CAUTION:
+        return []
+    severity: Severity = "bad" if value >= bad else "caution"
+    limit = bad if severity == "bad" else CONTAMINATION_CAUTION
+    if level.scf == "UHF":
+        advice = (
+            "the wavefunction mixes in higher spin states and exaggerates spin polarisation: do not judge a "
+            "candidate by these couplings, use the density-functional level"
+            if severity == "bad"
+            else "the wavefunction mixes in higher spin states, spin polarisation is exaggerated: lean on the "
+            "density-functional level"
+        )
+    else:
+        advice = (
+            "unusually large for a density functional: suspect a wrong state, compare with another functional"
+            if severity == "bad"
+            else "somewhat large for a density functional: compare with another functional"
+        )
+    return [Flag("contaminated", severity, advice, value, limit, level.id)]
+
+
+def heavy_atom_flags(point: Point) -> list[Flag]:
+    """Elements for which a non-relativistic first-order coupling is doubtful."""
+    flags = []
+    for label, number in zip(point.molecule.labels, point.molecule.atomic_numbers, strict=True):
+        if number <= HEAVY_CAUTION:
+            continue
+        severity: Severity = "bad" if number > HEAVY_BAD else "caution"
+        flags.append(
+            Flag(
+                "heavy-atom",
+                severity,
+                "no relativity and no spin-orbit coupling here: this nucleus's coupling can be off by tens of "
+                "per cent, and g shifts are large",
+                float(number),
+                float(HEAVY_BAD if severity == "bad" else HEAVY_CAUTION),
+                point.level.id,
+                label,
+            )
+        )
+    return flags
+
+
+def contracted_basis_flags(point: Point, isotopes: Sequence[str | None]) -> list[Flag]:
+    """Basis sets that are too rigid at a coupled nucleus: made for energies, not for couplings."""
+    flags = []
+    for label, element, number, isotope in zip(
+        point.molecule.labels, point.molecule.elements, point.molecule.atomic_numbers, isotopes, strict=True
+    ):
+        if isotope is None:
+            continue
+        value, limit = tightness(catalogue.basis_for(point.level.basis, element), number)
+        if value < limit:
+            flags.append(
+                Flag(
+                    "contracted-basis",
+                    "caution" if element in ("H", "He") else "bad",
+                    "this basis set was made for energies and is too rigid at the nucleus: couplings can be off "
+                    "by half or have the wrong sign; take pcH-1, pcH-2 or another set made for couplings",
+                    value,
+                    limit,
+                    point.level.id,
+                    label,
+                )
+            )
+    return flags
+
+
+def restricted_flags(point: Point) -> list[Flag]:
+    """Restricted-open levels lack spin polarisation by construction."""
+    if point.level.is_unrestricted:
+        return []
+    return [
+        Flag(
+            "no-polarisation",
+            "note",
+            "a restricted-open level has no spin polarisation: a nucleus in the nodal plane gets zero by "
+            "construction, which is its answer and not an error",
+            level=point.level.id,
+        )
+    ]
+
+
+def high_spin_flags(point: Point) -> list[Flag]:
+    """More than one unpaired electron: the spectrum needs terms that are not computed."""
+    if point.molecule.multiplicity <= 2:
+        return []
+    return [
+        Flag(
+            "zero-field-splitting",
+            "note",
+            "more than one unpaired electron: couplings are per 2S, and zero-field splitting, which shapes "
+            "the spectrum, is not computed",
+            float(point.molecule.multiplicity),
+            2.0,
+            point.level.id,
+        )
+    ]
+
+
+def broken_symmetry_flags(
+    point: Point, groups: Sequence[Group], couplings_MHz: Sequence[float | None]
+) -> list[Flag]:
+    """Nuclei that symmetry makes equivalent, but whose couplings differ."""
+    flags = []
+    for group in groups:
+        values = [couplings_MHz[member] for member in group.members]
+        if group.origin != "symmetry" or any(value is None for value in values):
+            continue
+        field = np.array([mT_from_MHz(value) for value in values if value is not None])
+        spread = float(np.ptp(field))
+        limit = max(SYMMETRY_TOLERANCE_MT, SYMMETRY_TOLERANCE_SHARE * abs(float(field.mean())))
+        if spread > limit:
+            for member in group.members:
+                flags.append(
+                    Flag(
+                        "symmetry-broken",
+                        "bad",
+                        "nuclei that the geometry makes equivalent differ (value and limit in mT): the "
+                        "wavefunction broke the symmetry, its couplings are not those of the molecule",
+                        spread,
+                        limit,
+                        point.level.id,
+                        point.molecule.labels[member],
+                    )
+                )
+    return flags

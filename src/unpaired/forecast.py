@@ -1,0 +1,62 @@
+"""What a run would do: sizes, memory and time of every point, and a refusal of what cannot fit."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from . import machine
+from .errors import InputError
+from .recipe.recipe import Recipe
+from .report import layout
+from .study import Plan, plan
+
+GIB = 2**30
+
+
+def forecast_report(recipes: Sequence[Recipe]) -> str:
+    """One line per level: atoms, electrons, basis functions, memory and time expected on this machine.
+
+    Raises InputError for a structure that cannot be used and for a level that cannot fit in memory.
+    """
+    from .electronic.cost import estimate
+
+    plans = [plan(recipe) for recipe in recipes]
+    require_memory(plans)
+    head = ["radical", "level", "atoms", "electrons", "basis functions", "memory / GiB", "time / s"]
+    lines, total_s = [], 0.0
+    for planned in plans:
+        for point in planned.points:
+            cost = estimate(point)
+            total_s += cost.seconds
+            lines.append(
+                [
+                    planned.recipe.radical,
+                    point.level.id,
+                    str(len(point.molecule.elements)),
+                    str(point.molecule.electrons),
+                    str(cost.basis_functions),
+                    f"{cost.memory_bytes / GIB:.2f}",
+                    f"{cost.seconds:.1f}",
+                ]
+            )
+    text = layout(head, lines, left=2)
+    return text + f"{len(lines)} points, about {total_s:.0f} s on {machine.cores()} cores\n"
+
+
+def require_memory(plans: Sequence[Plan]) -> None:
+    """Raise InputError, naming what to change, if a point needs more memory than there is."""
+    from .electronic.cost import estimate
+
+    available = machine.memory_bytes()
+    problems = []
+    for planned in plans:
+        for level, point in zip(planned.recipe.levels, planned.points, strict=True):
+            cost = estimate(point)
+            if cost.memory_bytes > available:
+                problems.append(
+                    f"{planned.recipe.path}: {level.id} needs about {cost.memory_bytes / GIB:.1f} GiB of memory "
+                    f"and {available / GIB:.1f} GiB are free: close other programs, take a smaller basis set "
+                    f"than {level.basis} ({cost.basis_functions} functions), or accuracy: quick"
+                )
+    if problems:
+        raise InputError("\n".join(problems))

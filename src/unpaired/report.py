@@ -1,0 +1,154 @@
+"""The printed view of a result: levels side by side, one row per group, findings beside the numbers."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from .result import Result, Row
+
+MARKS = {"bad": "!!", "caution": "! ", "note": "  "}
+MARK_MEANING = "!! do not use this number   ! look at the findings first"
+
+
+def coupling_report(result: Result) -> str:
+    """Couplings of every group in mT, MHz in brackets, one column per level; measured values last."""
+    levels = result.level_ids
+    measured = _measured_per_group(result)
+    head = ["group", "nuclei", "isotope", *levels] + (["measured"] if measured else [])
+    lines = []
+    for label in dict.fromkeys(row["group"] for row in result.rows("couplings", levels[0])):
+        members = [row for row in result.rows("couplings", levels[0]) if row["group"] == label]
+        cells = [label, _places(members), members[0]["isotope"] or "-"]
+        for level in levels:
+            rows = [row for row in result.rows("couplings", level) if row["group"] == label]
+            cells.append(_coupling(rows, _worst(result, level, {row["atom"] for row in rows})))
+        if measured:
+            cells.append(measured.get(label, ""))
+        lines.append(cells)
+    unassigned = [item for item in result.recipe["measured"] if not item["atoms"]]
+    text = layout(head, lines, left=3)
+    for item in unassigned:
+        text += f"measured, not assigned: {_count(item)} x {_measured(item)} mT\n"
+    return text
+
+
+def state_report(result: Result) -> str:
+    """Energy, <S^2> and what became of every level."""
+    head = ["level", "energy / Eh", "<S^2>", "exact", "stable", "iterations", "time / s", "findings"]
+    lines = []
+    for row in result.rows("states"):
+        stable = {True: "yes", False: "no", None: "not tested"}[row["stable"]]
+        if not row["converged"]:
+            lines.append([row["level"], "failed", "", "", "", "", "", row["flags"].replace(";", " ")])
+            continue
+        lines.append(
+            [
+                row["level"],
+                f"{row['energy_Eh']:.6f}",
+                f"{row['s_squared']:.4f}",
+                f"{row['s_squared_exact']:.4f}",
+                stable,
+                str(row["iterations"]),
+                f"{row['wall_s']:.1f}",
+                row["flags"].replace(";", " "),
+            ]
+        )
+    return layout(head, lines, left=1, left_last=True)
+
+
+def flag_report(result: Result) -> str:
+    """Every finding once: where, value against limit, and what to do."""
+    lines = []
+    seen: dict[tuple[str, str, str], list[Row]] = {}
+    for row in result.rows("flags"):
+        seen.setdefault((row["code"], row["severity"], row["advice"]), []).append(row)
+    order = {"bad": 0, "caution": 1, "note": 2}
+    for (code, severity, advice), rows in sorted(seen.items(), key=lambda item: order[item[0][1]]):
+        places = [_place(row) for row in rows]
+        lines.append(
+            f"{MARKS[severity]} {code} ({severity}): {'; '.join(dict.fromkeys(places))}\n     {advice}"
+        )
+    return "\n".join(lines) + "\n" if lines else ""
+
+
+def full_report(result: Result) -> str:
+    """Everything that `unpaired run` prints about one radical."""
+    recipe = result.recipe
+    solvent = recipe.get("solvent")
+    medium = (
+        f"in {solvent['name']} (dielectric constant {solvent['dielectric']:g})" if solvent else "gas phase"
+    )
+    head = f"{result.radical}   charge {recipe['charge']:+d}   2S+1 = {recipe['multiplicity']}   {medium}\n"
+    parts = [head.replace("+0", "0"), "couplings in mT (MHz), mean of each group of equivalent nuclei"]
+    parts += [coupling_report(result), state_report(result)]
+    findings = flag_report(result)
+    if findings:
+        parts += [f"findings   ({MARK_MEANING})", findings]
+    return "\n".join(parts)
+
+
+def _place(row: Row) -> str:
+    where = row["level"] or "all levels"
+    if row["atom"]:
+        where += f" {row['atom']}"
+    if row["value"] is not None and row["limit"] is not None:
+        where += f" {row['value']:.3g} (limit {row['limit']:.3g})"
+    return where
+
+
+def _coupling(rows: Sequence[Row], severity: str) -> str:
+    if not rows or rows[0]["a_group_mT"] is None:
+        return "-   "
+    megahertz = sum(row["a_iso_MHz"] for row in rows) / len(rows)
+    field = rows[0]["a_group_mT"]
+    return f"{_signed(field, 3)} ({_signed(megahertz, 1)}) {MARKS[severity]}"
+
+
+def _signed(value: float, digits: int) -> str:
+    text = f"{value:+.{digits}f}"
+    return text.replace("+", " ") if float(text) == 0 else text
+
+
+def _worst(result: Result, level: str, atoms: set[str]) -> str:
+    found = [
+        row["severity"]
+        for row in result.rows("flags")
+        if row["level"] in (None, level) and (row["atom"] is None or row["atom"] in atoms)
+    ]
+    return min(found, key=("bad", "caution", "note").index, default="note")
+
+
+def _places(rows: Sequence[Row]) -> str:
+    """`3 (H2 H3 H4)` or `1`."""
+    return f"{len(rows)} ({' '.join(row['atom'] for row in rows)})" if len(rows) > 1 else "1"
+
+
+def _measured_per_group(result: Result) -> dict[str, str]:
+    group_of = {row["atom"]: row["group"] for row in result.rows("couplings")}
+    found: dict[str, list[str]] = {}
+    for item in result.recipe["measured"]:
+        for group in dict.fromkeys(group_of[atom] for atom in item["atoms"] or ()):
+            found.setdefault(group, []).append(_measured(item))
+    return {group: " / ".join(values) for group, values in found.items()}
+
+
+def _measured(item: Row) -> str:
+    return f"|{item['coupling_mT']:g}|" if item["sign"] == "unknown" else f"{item['coupling_mT']:+g}"
+
+
+def _count(item: Row) -> int:
+    return int(item["count"])
+
+
+def layout(head: Sequence[str], lines: Sequence[Sequence[str]], left: int, left_last: bool = False) -> str:
+    """Columns two spaces apart; the first `left` columns (and the last, if asked) are flush left."""
+    table = [list(head), *[list(line) for line in lines]]
+    widths = [max(len(row[place]) for row in table) for place in range(len(head))]
+    text = ""
+    for row in table:
+        cells = []
+        for place, (cell, width) in enumerate(zip(row, widths, strict=True)):
+            flush_left = place < left or (left_last and place == len(row) - 1)
+            cells.append(cell.ljust(width) if flush_left else cell.rjust(width))
+        text += "  ".join(cells).rstrip() + "\n"
+    return text
