@@ -110,7 +110,8 @@ def _as_recipe(understood: dict[str, Any]) -> dict[str, Any]:
         for level in understood["levels"]
     ]
     if understood["solvent"]:
-        data["solvent"] = understood["solvent"]["name"]
+        named = understood["solvent"]["name"][0].isalpha()
+        data["solvent"] = understood["solvent"]["name" if named else "dielectric"]
     data["measured"] = [
         {key: value for key, value in item.items() if value is not None} for item in understood["measured"]
     ]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Sequence
 from typing import Literal
 
@@ -23,6 +24,8 @@ DEFAULT_LEVELS = (
     Level("UKS", "pcH-1", functional="B3LYP"),
 )
 DEFAULT_RELAX = Level("UKS", "pcseg-1", functional="B3LYP")
+
+LONGEST_NAME = 200
 
 _LIST = "a list such as [{scf: UHF, basis: pcH-1}]"
 
@@ -103,6 +106,11 @@ def ask(section: Section, key: str, question: Callable[[str], str]) -> str | Non
     text = section.text(key)
     if text is None:
         return None
+    if len(text) > LONGEST_NAME:
+        section.refuse(
+            key, f"is too long for a name; allowed: {LONGEST_NAME} characters; found: {len(text)} characters"
+        )
+        return None
     try:
         return question(text)
     except ChoiceError as error:
@@ -164,21 +172,31 @@ def read_relax(recipe: Section, elements: Sequence[str] | None, from_smiles: boo
 def read_solvent(recipe: Section) -> Solvent | None:
     """The continuum, None for the gas phase."""
     allowed = (
-        "the name of a solvent or a dielectric constant of at least 1; leave the key out for the gas phase"
+        "the name of a solvent or a dielectric constant of at least 1 (digits without quotes, such as 78.4); "
+        "leave the key out for the gas phase"
     )
     node = recipe.get("solvent", "a solvent", allowed)
     if node is None:
         return None
     value = node.value if isinstance(node, Scalar) else None
-    number = isinstance(value, int | float) and not isinstance(value, bool)
-    if isinstance(value, int | float) and number and not 1 <= value < float("inf"):
-        recipe.refuse("solvent", f"is not a solvent; allowed: {allowed}; found: {found(node)}", node.line)
-        return None
-    if not number and not isinstance(value, str):
+    if isinstance(value, str):
+        named = not _looks_like_a_number(value)
+    else:
+        named = isinstance(value, int | float) and not isinstance(value, bool) and 1 <= value < math.inf
+    if value is None or not named:
         recipe.refuse("solvent", f"is not a solvent; allowed: {allowed}; found: {found(node)}", node.line)
         return None
     try:
-        return catalogue.solvent(value if isinstance(value, str) else float(value or 0))
+        return catalogue.solvent(value)
     except ChoiceError as error:
         recipe.refuse("solvent", error.message)
         return None
+
+
+def _looks_like_a_number(text: str) -> bool:
+    """True for what Python would take for a number and a recipe does not: 7_8, 012, .5, nan."""
+    try:
+        float(text)
+    except ValueError:
+        return False
+    return True

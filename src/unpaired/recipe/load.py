@@ -170,7 +170,7 @@ def _geometry(recipe: Section, path: Path) -> Geometry | None:
             "structure", f'is not a structure file; allowed: {", ".join(SUFFIXES)}; found: "{path.name}"'
         )
         return None
-    if not path.exists():
+    if not _is_file(path):
         beside = [p.name for p in path.parent.glob("*") if p.suffix.lower() in SUFFIXES]
         recipe.refuse(
             "structure",
@@ -183,6 +183,13 @@ def _geometry(recipe: Section, path: Path) -> Geometry | None:
     except StructureError as error:
         recipe.refuse("structure", error.message)
         return None
+
+
+def _is_file(path: Path) -> bool:
+    try:
+        return path.is_file()
+    except OSError:  # a name that is too long for the system
+        return False
 
 
 def _charge(recipe: Section, geometry: Geometry | None) -> int | None:
