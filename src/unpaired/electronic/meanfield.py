@@ -13,7 +13,8 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
     """An unconverged mean-field object. Fitting comes before the continuum: the other order refuses gradients."""
     from pyscf import dft, scf
 
-    kinds = {"UHF": scf.UHF, "ROHF": scf.ROHF, "UKS": dft.UKS, "ROKS": dft.ROKS}
+    # the classes themselves: scf.UHF(mole) of one electron is a shortcut that ignores a continuum
+    kinds = {"UHF": scf.uhf.UHF, "ROHF": scf.rohf.ROHF, "UKS": dft.uks.UKS, "ROKS": dft.roks.ROKS}
     field = kinds[level.scf](mole)
     if level.is_kohn_sham:
         field.xc = level.functional

@@ -11,6 +11,8 @@ import numpy as np
 from ..errors import ConvergenceError
 from ..point import Point
 from ..state import Solution, State
+from .boundary import library_errors
+from .converge import converge
 from .meanfield import mean_field
 from .mole import build_mole
 from .settings import settings
@@ -24,10 +26,16 @@ def solve(point: Point, report: Report | None = None) -> State:
 
     Raises CalculationError (ConvergenceError, ResourceError, EngineError) with the reason.
     """
+    with library_errors(f"{point.level.id}"):
+        return _solve(point, report)
+
+
+def _solve(point: Point, report: Report | None) -> State:
     started = time.perf_counter()
     mole = build_mole(point)
     setting = settings(point.level)
     field = mean_field(mole, point.level, point.solvent, setting)
+    field.chkfile = None
     iterations = 0
 
     def watch(local: dict[str, Any]) -> None:
@@ -37,9 +45,13 @@ def solve(point: Point, report: Report | None = None) -> State:
             report("scf", iterations, float(local["e_tot"]))
 
     field.callback = watch
-    field.kernel()
+    used = converge(field, field.get_init_guess(key="minao"))
     if not field.converged:
-        raise ConvergenceError(f"not converged after {iterations} iterations")
+        raise ConvergenceError(
+            f"not converged after {iterations} iterations of {', then '.join(used)}; "
+            "check structure, charge and multiplicity, or try another level"
+        )
+    story = () if len(used) == 1 else (f"converged by {', then '.join(used)}",)
     return State(
         solutions=(as_solution(field, origin="atomic superposition"),),
         taken=0,
@@ -47,6 +59,7 @@ def solve(point: Point, report: Report | None = None) -> State:
         ao_at_nuclei=mole.eval_gto("GTOval", mole.atom_coords()),
         iterations=iterations,
         wall_s=time.perf_counter() - started,
+        story=story,
     )
 
 
