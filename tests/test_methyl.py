@@ -37,6 +37,7 @@ def couplings_MHz(level: Level) -> tuple[float, float, float]:
     )
 
 
+@pytest.mark.slow
 @pytest.mark.parametrize(
     ("scf", "functional", "basis", "carbon_MHz", "proton_MHz", "s_squared"),
     [

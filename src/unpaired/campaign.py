@@ -12,6 +12,7 @@ from . import machine
 from .errors import InputError, StoreError
 from .execute import ADVICE, Here, Outcome, Pool, Solve, StoredSolve, Submitter, attempt, run_points
 from .files import require_writable
+from .forecast import require_memory
 from .point import Point
 from .recipe.load import load_recipes
 from .report import full_report
@@ -55,6 +56,8 @@ class Campaign:
             require_writable(out)
         except StoreError as error:
             raise InputError(error.message) from None
+        self.plans = [plan(recipe) for recipe in self.recipes]
+        require_memory(self.plans)
         self.store = Store(out, identity, say=_say)
         self.solve = StoredSolve(solve or _engine, self.store)
         self.executor = executor
@@ -64,7 +67,7 @@ class Campaign:
 
         On KeyboardInterrupt the finished levels are written and the interrupt goes on.
         """
-        plans = [plan(recipe) for recipe in self.recipes]
+        plans = self.plans
         places = [
             (which, level) for which, planned in enumerate(plans) for level in range(len(planned.points))
         ]
