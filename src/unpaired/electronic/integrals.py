@@ -7,8 +7,9 @@ from collections.abc import Iterator
 import numpy as np
 from numpy.typing import NDArray
 
+from ..minimal import BeyondMinimalBasis, MinimalBasis
+from ..molecule import SYMBOLS
 from ..point import Point
-from ..properties.minimal import MinimalBasis
 from .mole import build_mole
 
 Array = NDArray[np.float64]
@@ -40,16 +41,20 @@ def field_gradients(point: Point, spin_density_matrix: Array) -> Array:
 def minimal_basis(point: Point) -> MinimalBasis:
     """The free-atom functions (PySCF's MINAO set) that orbitals are compared with.
 
-    Raises KeyError for an element that the set does not have.
+    Raises BeyondMinimalBasis for an element that the set does not have (potassium, and those after krypton).
     """
     from pyscf import gto
     from pyscf.lo.iao import reference_mol
 
+    lacking = {"K"} | set(SYMBOLS[36:])
+    for element in point.molecule.elements:
+        if element in lacking:
+            raise BeyondMinimalBasis(f"there are no free-atom functions for {element}")
     mole = build_mole(point)
     reference = reference_mol(mole, "minao")
     labels = reference.ao_labels(fmt=False)
     charges = [gto.charge(symbol) for _, symbol, _, _ in labels]
-    axes = {"x": (1.0, 0.0, 0.0), "y": (0.0, 1.0, 0.0), "z": (0.0, 0.0, 1.0)}
+    axes = {"px": (1.0, 0.0, 0.0), "py": (0.0, 1.0, 0.0), "pz": (0.0, 0.0, 1.0)}
     return MinimalBasis(
         cross=gto.intor_cross("int1e_ovlp", mole, reference),
         own=reference.intor_symmetric("int1e_ovlp"),
