@@ -31,7 +31,7 @@ CONTAMINANTS = 4
 
 @dataclass
 class Origin:
-    """What the spin density of one state is made of, as rows without the columns that name radical and level."""
+    """What the spin density of one state is made of, as rows that do not yet name radical and level."""
 
     atoms: Rows
     """Columns of couplings.csv, one entry per atom."""

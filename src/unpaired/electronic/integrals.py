@@ -60,9 +60,7 @@ def minimal_basis(point: Point) -> MinimalBasis:
         own=reference.intor_symmetric("int1e_ovlp"),
         atom=np.array([label[0] for label in labels]),
         core=np.array([_is_core(charge, label[2]) for charge, label in zip(charges, labels, strict=True)]),
-        axis=np.array(
-            [axes.get(label[3], (0.0, 0.0, 0.0)) if "p" in label[2] else (0.0, 0.0, 0.0) for label in labels]
-        ),
+        axis=np.array([axes.get(label[2][-1] + label[3], (0.0, 0.0, 0.0)) for label in labels]),
     )
 
 

@@ -36,7 +36,7 @@ def localising_rotation(coefficients: Array, atom: NDArray[np.int_]) -> Array:
                 angle = np.arctan2(b, -a) / 4
                 if abs(angle) < SMALLEST_TURN:
                     continue
-                largest = max(largest, abs(angle))
+                largest = max(largest, float(abs(angle)))
                 cos, sin = np.cos(angle), np.sin(angle)
                 turn = np.array([[cos, -sin], [sin, cos]])
                 current[:, [i, j]] = current[:, [i, j]] @ turn

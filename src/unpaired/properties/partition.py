@@ -10,8 +10,8 @@ from numpy.typing import NDArray
 
 from ..minimal import MinimalBasis
 from .corresponding import Corresponding
-from .localise import localising_rotation
 from .intrinsic import intrinsic_orbitals
+from .localise import localising_rotation
 
 Array = NDArray[np.float64]
 
@@ -48,10 +48,11 @@ def direct_at_nuclei(pairs: Corresponding, ao_at_nuclei: Array) -> Array:
 def localised_pairs(
     pairs: Corresponding, overlap: Array, ao_at_nuclei: Array, minimal: MinimalBasis, pi: Array | None
 ) -> tuple[Pair, ...]:
-    """Matched pairs turned into local ones: alpha and beta by one and the same rotation, core and valence apart.
+    """Matched pairs turned into local ones, core and valence apart, sigma and pi apart.
 
-    The rotation leaves the sum over pairs of alpha^2 - beta^2 as it is. `pi` holds the free-atom functions of
-    pi kind, shape (free-atom functions, pi functions), or None where there is no plane or axis.
+    One rotation turns alpha and beta, so that the sum over pairs of alpha^2 - beta^2 stays as it is.
+    `pi` holds the free-atom functions of pi kind, shape (free-atom functions, pi functions), or None where
+    there is no plane or axis.
     """
     count = len(pairs.overlaps)
     if count == 0:
@@ -102,7 +103,7 @@ def pi_functions(coordinates_bohr: Array, minimal: MinimalBasis) -> Array | None
 
 
 def perpendicular(coordinates_bohr: Array) -> Array | None:
-    """Unit vectors that leave the plane (1) or the axis (2) of all nuclei, shape (1 or 2, 3); None for neither."""
+    """Unit vectors that leave the plane (1) or the axis (2) of all nuclei, shape (1 or 2, 3), or None."""
     if len(coordinates_bohr) < 2:
         return None
     centred = coordinates_bohr - coordinates_bohr.mean(axis=0)
