@@ -17,6 +17,7 @@ from .constants import contact_coupling_MHz, mT_from_MHz
 from .flag import Flag
 from .molecule import Molecule
 from .nuclei import isotope
+from .origin import Origin, spin_origin
 from .point import Point
 from .properties.contact import spin_density_at_nuclei
 from .state import Failure, State
@@ -44,6 +45,7 @@ def analyse(point: Point, state: State, groups: Sequence[Group], isotopes: Seque
         details={"story": list(state.story), "engine": dict(state.engine)},
     )
     add_couplings(part, point, state, groups)
+    add_origin(part, spin_origin(point, state, groups, isotopes))
     part.flags += diagnostics.contamination_flags(state, point)
     part.flags += diagnostics.restricted_flags(point)
     part.flags += diagnostics.high_spin_flags(point)
@@ -105,6 +107,16 @@ def add_couplings(part: Part, point: Point, state: State, groups: Sequence[Group
             row["a_iso_MHz"] = contact_coupling_MHz(float(density[place]), nuclear_g, multiplicity)
             row["a_iso_mT"] = mT_from_MHz(row["a_iso_MHz"])
             row["a_group_mT"] = mT_from_MHz(contact_coupling_MHz(float(mean[place]), nuclear_g, multiplicity))
+
+
+def add_origin(part: Part, origin: Origin) -> None:
+    """Where the spin density is and why, beside the couplings."""
+    for row, more in zip(part.tables["couplings"], origin.atoms, strict=True):
+        row |= more
+    part.tables["states"][0] |= origin.state
+    part.tables["polarisation"] = origin.polarisation
+    part.tables["populations"] = origin.populations
+    part.details |= origin.details
 
 
 def group_means(values: np.ndarray[Any, Any], groups: Sequence[Group]) -> np.ndarray[Any, Any]:

@@ -46,6 +46,23 @@ TABLES: dict[str, tuple[Column, ...]] = {
         ("a_iso_MHz", "MHz", "isotropic hyperfine coupling, signed"),
         ("a_iso_mT", "mT", "the same in field units at g_e"),
         ("a_group_mT", "mT", "mean over the group, the value that an averaged spectrum shows"),
+        ("direct_mT", "mT", "part of a_iso_mT that the singly occupied orbitals make themselves"),
+        ("polarisation_mT", "mT", "the rest: spin polarisation of paired electrons, 0 for ROHF and ROKS"),
+        ("a_iso_projected_MHz", "MHz", "a_iso of the pure-spin part; UHF only, else empty"),
+        ("a_iso_projected_mT", "mT", "the same in field units at g_e"),
+        ("a_group_projected_mT", "mT", "its mean over the group"),
+        *(
+            (f"t_{axes}_MHz", "MHz", "dipolar tensor in the axes of structure.xyz, traceless")
+            for axes in ("xx", "yy", "zz", "xy", "xz", "yz")
+        ),
+        *(
+            (f"t_{place}_MHz", "MHz", "principal value of the dipolar tensor, ascending")
+            for place in (1, 2, 3)
+        ),
+        *(
+            (f"A_{place}_MHz", "MHz", f"principal value of the full tensor, a_iso + t_{place}")
+            for place in (1, 2, 3)
+        ),
         _FLAGS,
     ),
     "states": _block(
@@ -59,7 +76,26 @@ TABLES: dict[str, tuple[Column, ...]] = {
         ("stable", "", "true if no nearby lower solution exists; empty if not tested"),
         ("iterations", "", "iterations of the original calculation"),
         ("wall_s", "s", "wall time of the original calculation"),
+        ("pure_spin_weight", "", "weight of spin S in the determinant; UHF only, else empty"),
+        ("s_squared_without_next_spin", "", "<S^2> with the part of spin S+1 removed; UHF only, else empty"),
         _FLAGS,
+    ),
+    "polarisation": _block(
+        *_LEVEL,
+        ("atom", "", "nucleus that feels the pair"),
+        ("pair", "", "atom or bond that the pair of electrons sits on"),
+        ("kind", "", "core or valence; sigma or pi where there is a plane or an axis"),
+        ("contribution_mT", "mT", "what the pair's polarisation adds to a_iso_mT of the atom"),
+    ),
+    "populations": _block(
+        *_LEVEL,
+        ("atom", "", "element and 1-based place in structure.xyz"),
+        (
+            "spin_population",
+            "",
+            "alpha minus beta electrons in the atom's intrinsic orbitals; they sum to 2S",
+        ),
+        ("pi_spin_population", "", "the part in p functions that leave the plane; empty without a plane"),
     ),
     "flags": _block(
         *_LEVEL,
