@@ -6,6 +6,7 @@ from typing import Any
 
 from ..level import Level
 from ..point import Solvent
+from .frame import turned_grids
 from .settings import Settings
 
 
@@ -18,7 +19,7 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
     field = kinds[level.scf](mole)
     if level.is_kohn_sham:
         field.xc = level.functional
-        field.grids.level = settings.grid_level
+        field.grids = turned_grids(mole, settings.grid_level)
     if settings.fitting_set is not None:
         field = field.density_fit(auxbasis=settings.fitting_set)
     if solvent is not None:
