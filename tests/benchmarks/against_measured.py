@@ -1,0 +1,54 @@
+"""Computed against measured couplings of finished runs, per group, with the mean absolute error per nucleus.
+
+    unpaired run recipes/*.yaml; python tests/benchmarks/against_measured.py results/*
+
+prints markdown. The last level of each recipe is compared; magnitudes where the sign is unknown. Averaged
+couplings are taken where the result has them.
+"""
+
+from __future__ import annotations
+
+import sys
+from collections import defaultdict
+from pathlib import Path
+
+from unpaired import load_result
+
+
+def main() -> None:
+    """Print the table."""
+    errors: dict[str, list[float]] = defaultdict(list)
+    print("| radical | atoms | isotope | computed / mT | measured / mT | error / mT | from memory |")
+    print("| --- | --- | --- | --- | --- | --- | --- |")
+    for folder in map(Path, sys.argv[1:]):
+        result = load_result(folder)
+        rows = {row["atom"]: row for row in result.rows("couplings", result.level_id())}
+        for item in result.recipe["measured"]:
+            if not item["atoms"]:
+                continue
+            picked = [rows[atom] for atom in item["atoms"]]
+            values = [
+                row["a_iso_mT"] if row.get("a_averaged_mT") is None else row["a_averaged_mT"]
+                for row in picked
+            ]
+            if None in values:
+                print(
+                    f"| {result.radical} | {' '.join(item['atoms'])} | {picked[0]['isotope']} | failed | | | |"
+                )
+                continue
+            computed = sum(values) / len(values)
+            shown = computed if item["sign"] != "unknown" else abs(computed)
+            error = shown - item["coupling_mT"]
+            errors[picked[0]["isotope"]].append(abs(error))
+            memory = "yes" if "from memory" in item["source"] else "no"
+            print(
+                f"| {result.radical} | {' '.join(item['atoms'])} | {picked[0]['isotope']} | {shown:+.3f} | "
+                f"{item['coupling_mT']:+.3f} | {error:+.3f} | {memory} |"
+            )
+    print("\n| isotope | couplings | mean absolute error / mT |\n| --- | --- | --- |")
+    for isotope, found in sorted(errors.items()):
+        print(f"| {isotope} | {len(found)} | {sum(found) / len(found):.3f} |")
+
+
+if __name__ == "__main__":
+    main()
