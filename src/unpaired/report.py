@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import textwrap
 from collections.abc import Sequence
 
 from .result import Result, Row
@@ -65,9 +66,8 @@ def flag_report(result: Result) -> str:
     order = {"bad": 0, "caution": 1, "note": 2}
     for (code, severity, advice), rows in sorted(seen.items(), key=lambda item: order[item[0][1]]):
         places = [_place(row) for row in rows]
-        lines.append(
-            f"{MARKS[severity]} {code} ({severity}): {'; '.join(dict.fromkeys(places))}\n     {advice}"
-        )
+        head = f"{MARKS[severity]} {code} ({severity}): {'; '.join(dict.fromkeys(places))}"
+        lines.append(_wrapped(head, "       ") + "\n" + _wrapped(f"     {advice}", "     "))
     return "\n".join(lines) + "\n" if lines else ""
 
 
@@ -85,6 +85,11 @@ def full_report(result: Result) -> str:
     if findings:
         parts += [f"findings   ({MARK_MEANING})", findings]
     return "\n".join(parts)
+
+
+def _wrapped(text: str, indent: str) -> str:
+    """Sentences broken at 110 characters; tables are never broken."""
+    return textwrap.fill(text, 110, subsequent_indent=indent, break_long_words=False, break_on_hyphens=False)
 
 
 def _place(row: Row) -> str:
