@@ -108,7 +108,10 @@ def _has_element(name: str, element: str) -> bool:
     if entry is None:
         return bool(_pyscf_shells(name, element))
     listed = entry["versions"][entry["latest_version"]]["elements"]
-    return str(ATOMIC_NUMBER[element]) in listed and "electron_shells" in _exchange_data(name, element)
+    if str(ATOMIC_NUMBER[element]) not in listed:
+        return False
+    # Only where there are potentials can an entry be without functions, and reading the data takes its time.
+    return "scalar_ecp" not in entry["function_types"] or "electron_shells" in _exchange_data(name, element)
 
 
 def check_basis(name: str, elements: Iterable[str]) -> None:
