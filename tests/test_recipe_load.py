@@ -72,6 +72,11 @@ def test_structure_is_read_relative_to_the_recipe(monkeypatch: pytest.MonkeyPatc
     np.testing.assert_allclose(molecule.coordinates_bohr[1], [0, 0, 1.15 / BOHR_ANGSTROM], rtol=1e-14)
 
 
+def test_what_the_structure_file_says_about_itself_is_kept() -> None:
+    comment = load_recipe(GOOD / "NO.yaml").structure_comment
+    assert comment == "nitric oxide at 1.15 angstrom, for tests of recipes only"
+
+
 def test_user_groups_and_dielectric_constant() -> None:
     recipe = load_recipe(GOOD / "methyl.yaml")
     assert recipe.groups == (("H2", "H3"),)

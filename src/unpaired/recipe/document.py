@@ -9,9 +9,9 @@ parsed by PyYAML, whose events are turned into a small tree that remembers the l
 from __future__ import annotations
 
 import re
-from collections.abc import Iterator
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Any
 
 import yaml
 
@@ -95,7 +95,7 @@ def read_document(path: Path, problems: Problems) -> NodeMap | None:
     """
     try:
         text = _read_text(path)
-        node = _Builder(text, problems).document()
+        node = _parsed(text, problems)
     except _Unreadable as end:
         problems.add(end.line, "", end.sentence)
         return None
@@ -160,21 +160,31 @@ def _yaml_problem(error: yaml.YAMLError, text: str) -> _Unreadable:
     return _Unreadable(line, f"is not valid YAML: {reason}")
 
 
+def _parsed(text: str, problems: Problems) -> Node:
+    try:
+        builder = _Builder(text, problems)
+    except yaml.YAMLError as error:  # a character that YAML does not allow is found at once
+        raise _yaml_problem(error, text) from None
+    return builder.document()
+
+
 class _Builder:
     """Turns the events of one YAML text into the tree."""
 
     def __init__(self, text: str, problems: Problems) -> None:
         self.text = text
         self.problems = problems
-        self.events: Iterator[yaml.Event] = yaml.parse(text, Loader=yaml.SafeLoader)
+        self.parser: Any = yaml.SafeLoader(text)
 
     def next(self) -> yaml.Event:
         try:
-            return next(self.events)
+            event: yaml.Event = self.parser.get_event()
         except yaml.YAMLError as error:
             raise _yaml_problem(error, self.text) from None
-        except (ValueError, OverflowError) as error:  # PyYAML lets them through for "\U00110000"
-            raise _Unreadable(1, f"is not valid YAML ({error})") from None
+        except (ValueError, OverflowError):  # PyYAML lets them through for "\U00110000"
+            line = self.parser.line + 1
+            raise _Unreadable(line, "is not valid YAML: there is no character with this number") from None
+        return event
 
     def document(self) -> Node:
         self.next()  # start of the stream

@@ -115,6 +115,7 @@ def _read(path: Path, problems: Problems) -> tuple[Recipe | None, str | None, in
             charge=charge,
             multiplicity=multiplicity,
             levels=levels,
+            structure_comment=geometry.comment if isinstance(geometry, Geometry) else "",
             solvent=solvent,
             isotopes=isotopes,
             groups=groups,

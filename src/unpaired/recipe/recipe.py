@@ -63,6 +63,8 @@ class Recipe:
     multiplicity: int
     """2S+1."""
     levels: tuple[Level, ...]
+    structure_comment: str = ""
+    """What the structure file says about itself."""
     solvent: Solvent | None = None
     """None is the gas phase."""
     isotopes: Mapping[str, str] = field(default_factory=dict)
