@@ -2,8 +2,8 @@
 
     H/h = g mu_B B S_z + sum_k [ a_k S.J_k - g_Nk mu_N B J_kz ]
 
-with the total spins J_k of the groups, so that 2^N states never appear. H conserves M = m_S + sum m_k: it falls
-into one real symmetric block per M, and the transitions that S_x allows join blocks M and M + 1.
+with the total spins J_k of the groups, so that 2^N states never appear. H conserves M = m_S + sum m_k: it
+falls into one real symmetric block per M, and the transitions that S_x allows join blocks M and M + 1.
 
 At a fixed frequency every resonance field is a root of E_j(B) - E_i(B) = nu. Levels and their slopes
 dE/dB = <dH/dB> are computed at the ends of a field interval and joined by the Hermite cubic; where the cubic
@@ -106,13 +106,20 @@ def blocks(splittings: Sequence[Splitting], twice_js: Sequence[int], electron_MH
                     flip = a / 4 * np.sqrt(twice_j * (twice_j + 2) - m * (m - 2))
                     matrix[row, column] = matrix[column, row] = flip
         matrices.append(matrix)
-        zeeman.append(np.array([sum(s * m / 2 for s, m in zip(slopes, state, strict=True)) for state in here]))
+        zeeman.append(
+            np.array([sum(s * m / 2 for s, m in zip(slopes, state, strict=True)) for state in here])
+        )
         lower = [row for row, state in enumerate(here) if state[0] < 0]
         if total + 2 in states:
             raised.append(
-                (np.array(lower, dtype=np.intp), np.array([place[(1, *here[r][1:])] for r in lower], dtype=np.intp))
+                (
+                    np.array(lower, dtype=np.intp),
+                    np.array([place[(1, *here[r][1:])] for r in lower], dtype=np.intp),
+                )
             )
-            twice_m.append(np.array([here[r][1:] for r in lower], dtype=np.int16).reshape(len(lower), -1))
+            twice_m.append(
+                np.array([here[r][1:] for r in lower], dtype=np.int16).reshape(len(lower), len(twice_js))
+            )
     return Blocks(tuple(matrices), tuple(zeeman), tuple(raised), tuple(twice_m))
 
 
@@ -190,7 +197,9 @@ def _followed(known: Levels, other: Levels) -> Levels:
     for old, new in zip(known.vectors, other.vectors, strict=True):
         overlap = (old.T @ new) ** 2
         order = overlap.argmax(axis=1)
-        clear = overlap[np.arange(len(order)), order].min() > 0.5  # then no two old levels claim one new level
+        clear = (
+            overlap[np.arange(len(order)), order].min() > 0.5
+        )  # then no two old levels claim one new level
         orders.append(order if clear else np.arange(len(order)))
     return Levels(
         other.field_mT,
@@ -244,13 +253,12 @@ def _difference(values: tuple[FloatArray, ...], lower: int) -> FloatArray:
     return values[lower + 1][None, :] - values[lower][:, None]
 
 
-def _labels(
-    parts: Blocks, levels: Levels, lower: int, i: NDArray[np.intp], j: NDArray[np.intp]
-) -> IntArray:
+def _labels(parts: Blocks, levels: Levels, lower: int, i: NDArray[np.intp], j: NDArray[np.intp]) -> IntArray:
     """2m of the largest common component of lower states i and upper states j."""
     source, target = parts.raised[lower]
     common = np.abs(levels.vectors[lower][source][:, i] * levels.vectors[lower + 1][target][:, j])
-    return parts.twice_m[lower][common.argmax(axis=0)]
+    labels: IntArray = parts.twice_m[lower][common.argmax(axis=0)]
+    return labels
 
 
 def _cubic_root(

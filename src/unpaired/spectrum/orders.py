@@ -1,15 +1,15 @@
 """First- and second-order line positions of one group of equivalent nuclei.
 
-Second order. The flip terms (a_k/2)(S+ J_k- + S- J_k+) act twice through the other electron level, which lies
-the resonance energy h nu away whatever the nuclei do. For groups k and l this gives, in the level m_S = +-1/2,
-+-(a_k a_l / 4 h nu) J_k-+ J_l+-. The terms k = l shift the line by
+Second order. The flip terms (a_k/2)(S+ J_k- + S- J_k+) act twice through the other electron level, which
+lies the resonance energy h nu away whatever the nuclei do. For groups k and l this gives, in the level
+m_S = +-1/2, +-(a_k a_l / 4 h nu) J_k-+ J_l+-. The terms k = l shift the line by
 
     (a_k^2 / 2 nu) [J_k (J_k + 1) - m_k^2]          (upwards in frequency, so downwards in field)
 
 and these add over the groups: that is the whole second-order shift. The cross terms k != l are off-diagonal:
 they exchange one unit of m between two groups, with the same mixing in both electron levels, and move a line
-only in third order - unless a_k and a_l differ by no more than about a_k a_l / (2 nu), when they must be treated
-together. Groups of one isotope with equal couplings are therefore joined before they come here, and
+only in third order - unless a_k and a_l differ by no more than about a_k a_l / (2 nu), when they must be
+treated together. Groups of one isotope with equal couplings are therefore joined before they come here, and
 `close_pairs` names those that are close without being equal.
 
 The formula is the one of physics notes section 8; tests hold it against exact diagonalisation.

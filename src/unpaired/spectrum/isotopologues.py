@@ -1,0 +1,307 @@
+"""Which isotopes the molecules hold: from a result to spin systems with shares, without another calculation.
+
+Spin densities do not depend on the isotope; only moments and spins change, so a coupling is carried over with
+the ratio of the nuclear g values. (Motion does depend on masses: an average made for one isotope is carried
+over without the mass effect, and the caller is told.)
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any, Literal
+
+from ..constants import CODATA_EDITION, ELECTRON_G, MHZ_PER_MT
+from ..errors import ChoiceError, InputError, nearest
+from ..nuclei import Isotope, isotope, natural_composition
+from ..result import Result, Row
+from ..spinsystem import SpinGroup, SpinNucleus, SpinSystem, Tensor
+
+CouplingKind = Literal["averaged", "equilibrium"]
+
+MIXTURE_BELOW = 0.9
+"""An element whose most abundant isotope (spinless ones together) falls below this share is a mixture by
+default: B, Cl, Br among the common ones."""
+SMALLEST_SHARE = 1e-4
+"""Isotopologues of default mixtures below this share are left out."""
+AVERAGED_COLUMN = "a_averaged_mT"
+TENSOR_COLUMNS = tuple(tuple(f"t_{min(a, b)}{max(a, b)}_MHz" for b in "xyz") for a in "xyz")
+
+Choice = tuple[tuple[Isotope | None, int], ...]
+"""How many of a site's atoms are of which isotope."""
+
+
+@dataclass(frozen=True)
+class Site:
+    """A group of the result: atoms that share one coupling."""
+
+    atoms: tuple[str, ...]
+    element: str
+    table_isotope: Isotope | None
+    """The isotope that the numbers of the result are for."""
+    coupling_mT: float | None
+    averaged: bool
+    tensors: Mapping[str, Tensor | None]
+
+
+@dataclass(frozen=True)
+class Question:
+    """Which spin systems are wanted of a result."""
+
+    level: str | None = None
+    """Level id; None is the last of the recipe."""
+    coupling: CouplingKind = "averaged"
+    """Averaged couplings where the result has them, or equilibrium ones throughout."""
+    labels: Mapping[str, str] | None = None
+    """Atom label or element to isotope, beyond what the recipe names."""
+    least_share: float | None = None
+    """Keep every isotopologue down to this share; None for main isotopes, with the default mixtures."""
+    g_iso: float | None = None
+    """None for the measured value of the recipe, else g_e."""
+    width_mT: float | None = None
+
+
+def spin_systems(result: Result, question: Question) -> tuple[SpinSystem, ...]:
+    """The isotopologues of a result, most abundant first.
+
+    Raises ChoiceError for a level or label that is not there, InputError for a level without numbers, for a
+    share outside 0..1 and for a g that is not positive.
+    """
+    level = result.level_id(question.level)
+    if question.least_share is not None and not 0 < question.least_share < 1:
+        raise InputError(
+            f"the least share of an isotopologue lies between 0 and 1, found {question.least_share}"
+        )
+    if question.width_mT is not None and not (math.isfinite(question.width_mT) and question.width_mT > 0):
+        raise InputError(f"the peak-to-peak width must be positive, found {question.width_mT} mT")
+    g_iso, g_source = g_of(result, question.g_iso)
+    sites = sites_of(result, level, question.coupling)
+    fixed = _fixed_isotopes(result, question.labels or {})
+    chosen = [
+        (share, choices)
+        for share, choices in _combinations(
+            [_choices(site, fixed, question.least_share) for site in sites],
+            question.least_share or SMALLEST_SHARE,
+        )
+    ]
+    kind = "averaged" if any(site.averaged for site in sites) else "equilibrium"
+    return tuple(
+        SpinSystem(
+            radical=result.radical,
+            level=level,
+            electron_spin=result.molecule.spin,
+            g_iso=g_iso,
+            g_source=g_source,
+            coupling_kind=kind,
+            groups=tuple(
+                group
+                for site, choice in zip(sites, choices, strict=True)
+                for group in _groups(result, level, site, choice, fixed)
+            ),
+            isotopologue=_name(sites, choices, fixed),
+            share=share,
+            peak_to_peak_width_mT=question.width_mT,
+            provenance=_provenance(result, sites, kind),
+        )
+        for share, choices in chosen
+    )
+
+
+def g_of(result: Result, given: float | None) -> tuple[float, str]:
+    """g and where it comes from: given, measured (recipe), or the free electron's."""
+    if given is not None:
+        if not (math.isfinite(given) and given > 0):
+            raise InputError(f"g must be positive, found {given}")
+        return given, "given with the command"
+    measured = result.recipe.get("g")
+    if measured:
+        source = measured.get("source") or "source not given"
+        return float(measured["value"]), f"measured, from the recipe: {source}"
+    return ELECTRON_G, f"free electron, {CODATA_EDITION}; not measured and not predicted"
+
+
+def sites_of(result: Result, level: str, coupling: CouplingKind) -> list[Site]:
+    """The groups of a level with their couplings."""
+    members: dict[str, list[Row]] = {}
+    for row in result.rows("couplings", level):
+        members.setdefault(row["group"] or row["atom"], []).append(row)
+    sites = []
+    for rows in members.values():
+        first = rows[0]
+        averages = [row.get(AVERAGED_COLUMN) for row in rows] if coupling == "averaged" else []
+        known = [value for value in averages if value is not None]
+        value = sum(known) / len(known) if known else first["a_group_mT"]
+        sites.append(
+            Site(
+                atoms=tuple(row["atom"] for row in rows),
+                element=first["atom"].rstrip("0123456789"),
+                table_isotope=isotope(first["isotope"]) if first["isotope"] else None,
+                coupling_mT=value,
+                averaged=bool(known),
+                tensors={row["atom"]: _tensor(row) for row in rows},
+            )
+        )
+    return sites
+
+
+def _tensor(row: Row) -> Tensor | None:
+    values: Any = tuple(tuple(row.get(name) for name in names) for names in TENSOR_COLUMNS)
+    return None if any(value is None for line in values for value in line) else values
+
+
+def _fixed_isotopes(result: Result, labels: Mapping[str, str]) -> dict[str, Isotope]:
+    """Isotope per atom label, from the recipe and then from `labels`, which may name elements."""
+    known = result.molecule.labels
+    elements = set(result.molecule.elements)
+    fixed = {atom: isotope(name) for atom, name in (result.recipe.get("isotopes") or {}).items()}
+    for label, name in sorted(labels.items(), key=lambda item: item[0] in known):  # atoms outrank elements
+        chosen = isotope(name)
+        atoms = [label] if label in known else [atom for atom in known if atom.rstrip("0123456789") == label]
+        if not atoms:
+            allowed = [*known, *sorted(elements)]
+            raise ChoiceError(
+                f'"{label}" is neither an atom nor an element of {result.radical}{nearest(label, allowed)} '
+                f"(there are {', '.join(allowed)})"
+            )
+        for atom in atoms:
+            if chosen.element != atom.rstrip("0123456789"):
+                raise ChoiceError(f"{atom} cannot be {chosen.name}: that is an isotope of {chosen.element}")
+            fixed[atom] = chosen
+    return fixed
+
+
+def _choices(
+    site: Site, fixed: Mapping[str, Isotope], least_share: float | None
+) -> list[tuple[float, Choice]]:
+    """What the atoms of a site that nobody fixed may be, with shares, most abundant first."""
+    free = sum(atom not in fixed for atom in site.atoms)
+    if not free or site.table_isotope is None:
+        return [(1.0, ())]
+    composition = natural_composition(site.element)
+    if least_share is None and composition[0][1] >= MIXTURE_BELOW:
+        return [(1.0, ((composition[0][0], free),))]
+    limit = least_share or SMALLEST_SHARE
+    found = [(share, choice) for share, choice in _multinomial(composition, free) if share >= limit]
+    if not found:
+        found = [max(_multinomial(composition, free), key=lambda pair: pair[0])]
+    return sorted(found, key=lambda pair: -pair[0])
+
+
+def _multinomial(
+    composition: Sequence[tuple[Isotope | None, float]], count: int
+) -> Iterator[tuple[float, Choice]]:
+    """Every way to fill `count` equivalent places, with its probability."""
+    (kind, share), *others = composition
+    if not others:
+        yield share**count, ((kind, count),) if count else ()
+        return
+    for number in range(count + 1):
+        here = math.comb(count, number) * share**number
+        for rest_share, rest in _multinomial(others, count - number):
+            yield here * rest_share, (((kind, number), *rest) if number else rest)
+
+
+def _combinations(
+    choices: Sequence[Sequence[tuple[float, Choice]]], limit: float
+) -> list[tuple[float, tuple[Choice, ...]]]:
+    """One choice per site; a product only falls, so whatever is below the limit on the way is dropped."""
+    found: list[tuple[float, tuple[Choice, ...]]] = [(1.0, ())]
+    for options in choices:
+        wider = [(share * more, (*before, choice)) for share, before in found for more, choice in options]
+        wider.sort(key=lambda pair: -pair[0])
+        found = [pair for pair in wider if pair[0] >= limit] or wider[:1]
+    return found
+
+
+def _isotope_atoms(
+    site: Site, choice: Choice, fixed: Mapping[str, Isotope]
+) -> list[tuple[Isotope | None, list[str]]]:
+    """The atoms of a site by isotope: those with a spin come first among those that nobody fixed."""
+    by_name: dict[str | None, tuple[Isotope | None, list[str]]] = {}
+    for atom in site.atoms:
+        if atom in fixed:
+            by_name.setdefault(fixed[atom].name, (fixed[atom], []))[1].append(atom)
+    free = [atom for atom in site.atoms if atom not in fixed]
+    for kind, number in sorted(choice, key=lambda pair: pair[0] is None):
+        here, free = free[:number], free[number:]
+        by_name.setdefault(kind.name if kind else None, (kind, []))[1].extend(here)
+    return list(by_name.values())
+
+
+def _groups(
+    result: Result, level: str, site: Site, choice: Choice, fixed: Mapping[str, Isotope]
+) -> Iterator[SpinGroup]:
+    for kind, atoms in _isotope_atoms(site, choice, fixed):
+        if kind is None:
+            continue
+        if site.coupling_mT is None or site.table_isotope is None:
+            raise InputError(_no_numbers(result, level))
+        ratio = kind.nuclear_g / site.table_isotope.nuclear_g
+        ordered = [atom for atom in site.atoms if atom in atoms]
+        coupling_mT = site.coupling_mT * ratio
+        yield SpinGroup(
+            group=ordered[0],
+            isotope=kind.name,
+            nuclear_spin=kind.spin,
+            count=len(ordered),
+            a_iso_MHz=coupling_mT * MHZ_PER_MT,
+            a_iso_mT=coupling_mT,
+            nuclei=tuple(SpinNucleus(atom, _scaled(site.tensors[atom], ratio)) for atom in ordered),
+        )
+
+
+def _scaled(tensor: Tensor | None, ratio: float) -> Tensor | None:
+    if tensor is None:
+        return None
+    scaled: Any = tuple(tuple(value * ratio for value in row) for row in tensor)
+    return scaled  # type: ignore[no-any-return]
+
+
+def _no_numbers(result: Result, level: str) -> str:
+    reasons = [
+        f"{row['code']}: {row['advice']}"
+        for row in result.rows("flags")
+        if row["level"] == level and row["severity"] == "bad"
+    ]
+    because = f" ({reasons[0]})" if reasons else ""
+    others = [
+        name
+        for name in result.level_ids
+        if any(row["a_iso_mT"] is not None for row in result.rows("couplings", name))
+    ]
+    instead = f"; levels with couplings: {', '.join(others)}" if others else ""
+    return f"level {level} of {result.radical} has no couplings{because}{instead}"
+
+
+def _name(sites: Sequence[Site], choices: Sequence[Choice], fixed: Mapping[str, Isotope]) -> str:
+    """Isotopes that are fixed, rare, or part of a mixture, each with its atoms; `main` if there are none."""
+    parts = []
+    for site, choice in zip(sites, choices, strict=True):
+        for kind, atoms in _isotope_atoms(site, choice, fixed):
+            composition = natural_composition(site.element) if site.table_isotope else ()
+            usual = bool(composition) and composition[0][0] == kind and composition[0][1] >= MIXTURE_BELOW
+            if kind is not None and not usual:
+                parts.append(f"{kind.name}({'+'.join(atoms)})")
+    return " ".join(parts) or "main"
+
+
+def _provenance(result: Result, sites: Sequence[Site], kind: str) -> dict[str, Any]:
+    entries: dict[str, Any] = dict(result.provenance)
+    if kind == "averaged":
+        entries["not_averaged"] = [site.atoms[0] for site in sites if not site.averaged]
+    return entries
+
+
+def mass_effect_missing(result: Result, systems: Sequence[SpinSystem]) -> list[str]:
+    """Groups whose averaged coupling is carried over to an isotope other than the one averaged for."""
+    isotope_of = {row["atom"]: row["isotope"] for row in result.rows("couplings", systems[0].level)}
+    found = [
+        f"{group.group} ({group.isotope})"
+        for system in systems
+        if system.coupling_kind == "averaged"
+        for group in system.groups
+        if isotope_of[group.group] != group.isotope
+        and group.group not in system.provenance.get("not_averaged", ())
+    ]
+    return list(dict.fromkeys(found))

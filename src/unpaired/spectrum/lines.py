@@ -1,0 +1,285 @@
+"""The line list of one or more spin systems: positions, intensities, and the m_I that make each line."""
+
+from __future__ import annotations
+
+import csv
+import io
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from typing import Literal, get_args
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..errors import ChoiceError, InputError, nearest
+from ..nuclei import isotope
+from ..spinsystem import SpinSystem
+from .exact import exact_lines
+from .orders import close_pairs, first_order, second_order, second_order_size_mT
+from .splitting import Splitting, Sweep
+
+Order = Literal["auto", "exact", "second", "first"]
+
+EXACT_STATES = 1024
+"""Largest product space of the nuclei that is diagonalised."""
+NEGLIGIBLE_SHARE_OF_WIDTH = 0.01
+"""a*a/(2 B0) below this share of the width: second order cannot be told from the exact line."""
+NO_SPLITTING_MHz = 1e-6
+"""A weaker coupling moves no line by 1e-7 mT: its group is left out of the diagonalisation."""
+EQUAL_MHz = 1e-6
+MOST_LABELLED = 300_000
+"""Beyond this number of lines, those closer than a small share of the width are joined and lose their m_I."""
+JOIN_SHARE_OF_WIDTH = 0.002
+ABSENT = np.int16(-32768)
+"""2m of a group that the line's isotopologue does not have, or that was joined with an equal one."""
+
+
+@dataclass(frozen=True, eq=False)
+class Lines:
+    """A line list; arrays have one entry per line."""
+
+    axis: str
+    """`field_mT` or `frequency_MHz`."""
+    position: NDArray[np.float64]
+    """In the unit of the axis, ascending."""
+    intensity: NDArray[np.float64]
+    """Sums to 1."""
+    groups: tuple[str, ...]
+    twice_m: NDArray[np.int16] | None
+    """2m per line and group, `ABSENT` where there is none; None if lines were joined."""
+    system: NDArray[np.intp]
+    """Which of `systems` a line belongs to."""
+    systems: tuple[SpinSystem, ...]
+    notes: tuple[str, ...]
+    """How the positions were found, and what to know about them: sentences."""
+
+    def __len__(self) -> int:
+        return len(self.position)
+
+
+def line_list(
+    systems: Sequence[tuple[SpinSystem, float]],
+    *,
+    frequency_MHz: float | None = None,
+    field_mT: float | None = None,
+    width_mT: float,
+    order: Order = "auto",
+) -> Lines:
+    """The lines of spin systems with weights, field swept at a frequency or frequency swept at a field.
+
+    `order` "auto" diagonalises where second order could be seen (a*a/(2 B0) above 1 % of `width_mT`) and the
+    nuclei's product space has at most 1024 states, and takes second order otherwise. Raises InputError for an
+    electron spin above 1/2, for widths and weights that are not positive, and where no line exists.
+    """
+    if order not in get_args(Order):
+        raise ChoiceError(
+            f'order "{order}" does not exist{nearest(order, get_args(Order))} '
+            f"(there are {', '.join(get_args(Order))})"
+        )
+    if not width_mT > 0:
+        raise InputError(f"the peak-to-peak width must be positive, found {width_mT} mT")
+    if any(not weight > 0 for _, weight in systems):
+        raise InputError("every weight must be positive")
+    parts = [
+        _of_one(system, Sweep(system.g_iso, frequency_MHz, field_mT), width_mT, order)
+        for system, _ in systems
+    ]
+    total = sum(weight for _, weight in systems)
+    groups = tuple(dict.fromkeys(name for part in parts for name in part.groups))
+    labelled = all(part.twice_m is not None for part in parts)
+    position = np.concatenate([part.position for part in parts])
+    sorting = np.argsort(position, kind="stable")
+    shares = [weight / total for _, weight in systems]
+    intensity = np.concatenate([part.intensity * share for part, share in zip(parts, shares, strict=True)])
+    return Lines(
+        axis=parts[0].axis,
+        position=position[sorting],
+        intensity=intensity[sorting],
+        groups=groups,
+        twice_m=np.concatenate([_widened(part, groups) for part in parts])[sorting] if labelled else None,
+        system=np.concatenate([np.full(len(part), k) for k, part in enumerate(parts)])[sorting],
+        systems=tuple(system for system, _ in systems),
+        notes=tuple(dict.fromkeys(note for part in parts for note in part.notes)),
+    )
+
+
+def splittings_of(system: SpinSystem) -> list[Splitting]:
+    """The groups of a system as the numerics take them."""
+    return [
+        Splitting(
+            twice_spin=round(2 * group.nuclear_spin),
+            count=group.count,
+            coupling_MHz=group.a_iso_MHz,
+            nuclear_g=isotope(group.isotope).nuclear_g,
+        )
+        for group in system.groups
+    ]
+
+
+def lines_csv(lines: Lines) -> str:
+    """Columns `field_mT` (or `frequency_MHz`), `intensity`, one `m_I_<group>` per group, and, where there
+    are several systems, `radical` and `isotopologue`. A group that a line does not have is empty."""
+    buffer = io.StringIO()
+    writer = csv.writer(buffer, lineterminator="\n")
+    several = len(lines.systems) > 1
+    writer.writerow(
+        [lines.axis, "intensity", *(f"m_I_{name}" for name in lines.groups)]
+        + (["radical", "isotopologue"] if several else [])
+    )
+    numbers = zip(lines.position.tolist(), lines.intensity.tolist(), strict=True)
+    labels = None if lines.twice_m is None else lines.twice_m.tolist()
+    for row, (position, intensity) in enumerate(numbers):
+        quanta = [""] * len(lines.groups) if labels is None else [_half(twice) for twice in labels[row]]
+        system = lines.systems[lines.system[row]]
+        names = [system.radical, system.isotopologue] if several else []
+        writer.writerow([position, intensity, *quanta, *names])
+    return buffer.getvalue()
+
+
+def _half(twice_m: int) -> str:
+    return "" if twice_m == ABSENT else str(twice_m / 2)
+
+
+def _widened(part: Lines, groups: tuple[str, ...]) -> NDArray[np.int16]:
+    """The labels of a part under the columns of all parts."""
+    assert part.twice_m is not None
+    wide = np.full((len(part), len(groups)), ABSENT, dtype=np.int16)
+    for column, name in enumerate(part.groups):
+        wide[:, groups.index(name)] = part.twice_m[:, column]
+    return wide
+
+
+def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: Order) -> Lines:
+    if system.electron_spin != 0.5:
+        raise InputError(
+            f"{system.radical} has S = {system.electron_spin:g}: its spectrum needs zero-field splitting, "
+            "which is not computed here; spectra are for S = 1/2 (`unpaired export` hands the couplings over)"
+        )
+    everything = splittings_of(system)
+    names = tuple(group.group for group in system.groups)
+    taken, reason = _choice(everything, sweep, width_mT, order)
+    notes = [f"{system.name}: {reason}"]
+    together = [[k] for k in range(len(names))] if taken == "first" else _joined_equals(system, everything)
+    for members in together:
+        if len(members) > 1:
+            notes.append(
+                f"{system.name}: {', '.join(names[k] for k in members)} have equal couplings and are treated "
+                f"as one group; their common m_I stands under {names[members[0]]}"
+            )
+    joined = [
+        replace(everything[members[0]], count=sum(everything[k].count for k in members))
+        for members in together
+    ]
+    if taken == "second":
+        for j, k in close_pairs(joined, sweep):
+            notes.append(
+                f"{system.name}: the couplings of {names[together[j][0]]} and {names[together[k][0]]} are so "
+                "close that second order mixes them; their fine structure is approximate (order exact has it)"
+            )
+    position, intensity, twice_m = _positions(joined, sweep, width_mT, taken)
+    if not len(position):
+        raise InputError(
+            f"{system.name}: no line exists at {sweep.frequency_MHz} MHz: the couplings alone split the "
+            "levels by more; raise the frequency"
+        )
+    if twice_m is None:
+        notes.append(f"{system.name}: too many lines to name; close ones are joined and m_I is left empty")
+        labels = None
+    else:
+        labels = np.full((len(position), len(names)), ABSENT, dtype=np.int16)
+        for column, members in enumerate(together):
+            labels[:, members[0]] = twice_m[:, column]
+    return Lines(
+        axis=sweep.axis,
+        position=position,
+        intensity=intensity,
+        groups=names,
+        twice_m=labels,
+        system=np.zeros(len(position), dtype=np.intp),
+        systems=(system,),
+        notes=tuple(notes),
+    )
+
+
+def _choice(
+    splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, order: Order
+) -> tuple[Order, str]:
+    """The order to take, and a sentence that says why."""
+    size = second_order_size_mT(splittings, sweep)
+    states = int(np.prod([float(s.states) for s in splittings if abs(s.coupling_MHz) >= NO_SPLITTING_MHz]))
+    compared = f"a*a/(2 B0) = {size:.2g} mT, width {width_mT:g} mT"
+    if order == "exact" and states > EXACT_STATES:
+        raise InputError(
+            f"exact line positions are for at most {EXACT_STATES} nuclear states, here are {states}: "
+            "take second order"
+        )
+    if order != "auto":
+        return order, f"line positions of {_WORDS[order]}, as asked for ({compared})"
+    if size <= NEGLIGIBLE_SHARE_OF_WIDTH * width_mT:
+        return "second", f"line positions of second order: {compared}, exact ones would look the same"
+    if states <= EXACT_STATES:
+        return "exact", f"exact line positions by diagonalisation: {compared}, {states} nuclear states"
+    return (
+        "second",
+        f"line positions of second order: {compared}, {states} nuclear states are too many for exact",
+    )
+
+
+_WORDS = {"exact": "exact diagonalisation", "second": "second order", "first": "first order"}
+
+
+def _joined_equals(system: SpinSystem, splittings: Sequence[Splitting]) -> list[list[int]]:
+    """Groups of one isotope with equal couplings flip together: places of those to be treated as one."""
+    together: list[list[int]] = []
+    for k, splitting in enumerate(splittings):
+        for members in together:
+            first = members[0]
+            if (
+                system.groups[first].isotope == system.groups[k].isotope
+                and abs(splittings[first].coupling_MHz - splitting.coupling_MHz) < EQUAL_MHz
+                and abs(splitting.coupling_MHz) >= NO_SPLITTING_MHz
+            ):
+                members.append(k)
+                break
+        else:
+            together.append([k])
+    return together
+
+
+def _positions(
+    splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, order: Order
+) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.int16] | None]:
+    """Positions, intensities and 2m per group; 2m is None if lines had to be joined."""
+    position = np.array([sweep.centre])
+    intensity = np.ones(1)
+    twice_m: NDArray[np.int16] | None = np.empty((1, len(splittings)), dtype=np.int16)
+    one_by_one = list(range(len(splittings)))
+    if order == "exact":
+        inside = [k for k in one_by_one if abs(splittings[k].coupling_MHz) >= NO_SPLITTING_MHz]
+        position, intensity, labels = exact_lines([splittings[k] for k in inside], sweep)
+        twice_m = np.empty((len(position), len(splittings)), dtype=np.int16)
+        twice_m[:, inside] = labels
+        one_by_one = [k for k in one_by_one if k not in inside]
+    displaced = second_order if order == "second" else first_order
+    for k in one_by_one:
+        offsets, shares, quanta = displaced(splittings[k], sweep)
+        position = np.add.outer(position, offsets).ravel()
+        intensity = np.multiply.outer(intensity, shares).ravel()
+        if twice_m is not None and len(position) <= MOST_LABELLED:
+            twice_m = np.repeat(twice_m, len(offsets), axis=0)
+            twice_m[:, k] = np.tile(quanta, len(twice_m) // len(offsets))
+        else:
+            twice_m = None
+            cell = JOIN_SHARE_OF_WIDTH * width_mT * sweep.axis_per_mT
+            position, intensity = joined_lines(position, intensity, cell)
+    return position, intensity, twice_m
+
+
+def joined_lines(
+    position: NDArray[np.float64], intensity: NDArray[np.float64], cell: float
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Lines of one cell joined at their centre of gravity: total intensity and first moment stay."""
+    _, place = np.unique(np.floor(position / cell), return_inverse=True)
+    weight = np.bincount(place, weights=intensity).astype(np.float64)
+    centre = np.bincount(place, weights=intensity * position) / weight
+    return centre, weight
