@@ -19,7 +19,7 @@ Every class takes its message as the only positional argument, so that it surviv
 from __future__ import annotations
 
 import difflib
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 
 
 class UnpairedError(Exception):
@@ -114,3 +114,11 @@ def nearest(wrong: str, allowed: Iterable[str]) -> str:
     known = {item.casefold(): item for item in allowed}
     found = difflib.get_close_matches(wrong.casefold(), known, n=1, cutoff=0.6)
     return f'; did you mean "{known[found[0]]}"?' if found else ""
+
+
+def require_choice(option: str, value: str, allowed: Sequence[str]) -> None:
+    """Raise ChoiceError, naming the nearest spelling and all that is allowed, unless `value` is one of them."""
+    if value not in allowed:
+        raise ChoiceError(
+            f'{option}: "{value}" does not exist{nearest(value, allowed)} (there are {", ".join(allowed)})'
+        )

@@ -16,8 +16,10 @@ import typer
 
 from ..errors import CalculationError, UnpairedError
 from .check import check
+from .export import export
 from .nuclei import nuclei
 from .run import run
+from .spectrum import spectrum
 from .table import table
 
 _Parameters = ParamSpec("_Parameters")
@@ -60,7 +62,7 @@ def _with_exit_status(command: Callable[_Parameters, None]) -> Callable[_Paramet
     return run
 
 
-for _command in (run, check, table, nuclei):
+for _command in (run, check, table, spectrum, export, nuclei):
     app.command()(_with_exit_status(_command))
 
 

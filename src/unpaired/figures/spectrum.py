@@ -36,6 +36,24 @@ class Caption:
     subtitle: str
     width_mT: float
 
+    @classmethod
+    def of(cls, lines: Lines, sweep: Sweep, width_mT: float) -> Caption:
+        """Radicals and levels; experiment, kind of coupling, and g with its source."""
+        names = dict.fromkeys(f"{system.radical} ({system.level})" for system in lines.systems)
+        kinds = dict.fromkeys(system.coupling_kind for system in lines.systems)
+        sources = dict.fromkeys(f"g = {s.g_iso:.5f}: {s.g_source}" for s in lines.systems)
+        fixed = (
+            f"{sweep.frequency_MHz / 1000:g} GHz"
+            if sweep.frequency_MHz is not None
+            else f"{sweep.field_mT:g} mT"
+        )
+        return cls(
+            title=" + ".join(names),
+            subtitle=f"{fixed}, peak-to-peak width {width_mT:g} mT, {' and '.join(kinds)} couplings\n"
+            + "; ".join(sources),
+            width_mT=width_mT,
+        )
+
 
 def spectrum_figure(
     lines: Lines, curve: Curve, sweep: Sweep, caption: Caption, fit: Overlay | None = None
@@ -132,8 +150,9 @@ def tree_levels(system: SpinSystem, sweep: Sweep, width_mT: float) -> tuple[list
 def _label(group: SpinGroup) -> str:
     counts = projection_counts(group.count, round(2 * group.nuclear_spin))
     ratio = ":".join(str(count) for count in counts) if len(counts) <= 7 else f"{len(counts)} lines"
+    value = f"{group.a_iso_mT:+.3f}".replace("-", "\N{MINUS SIGN}")
     many = f"{group.count} × " if group.count > 1 else ""
-    return f"{group.group}: {many}{group.isotope}  {group.a_iso_mT:+.3f} mT\n{ratio}"
+    return f"{group.group}: {many}{group.isotope}  {value} mT\n{ratio}"
 
 
 def _draw_curve(panel: Axes, curve: Curve, fit: Overlay | None) -> None:

@@ -140,11 +140,11 @@ def solve_at(parts: Blocks, field_mT: float) -> Levels:
 
 def _lines_of(splittings: Sequence[Splitting], twice_js: Sequence[int], sweep: Sweep) -> Found:
     parts = blocks(splittings, twice_js, sweep.electron_MHz_per_mT)
-    if sweep.field_mT is not None:
-        return _at_fixed_field(parts, sweep.field_mT)
     # Hyperfine terms move a level by at most their norm, |a|(J+1)/2 each, hence a line by twice that.
     reach_MHz = sum(abs(s.coupling_MHz) * (j / 2 + 1) for s, j in zip(splittings, twice_js, strict=True))
     reach_mT = 1.05 * reach_MHz / sweep.electron_MHz_per_mT + 0.01 * sweep.centre_mT
+    if sweep.field_mT is not None:
+        return _at_fixed_field(parts, sweep, reach_mT * sweep.electron_MHz_per_mT)
     first = max(sweep.centre_mT - reach_mT, 0.0)
     last = sweep.centre_mT + reach_mT
     assert sweep.frequency_MHz is not None
@@ -239,12 +239,13 @@ def _roots(parts: Blocks, low: Levels, middle: Levels, high: Levels, frequency_M
     return _joined(results, parts.twice_m[0].shape[1])
 
 
-def _at_fixed_field(parts: Blocks, field_mT: float) -> Found:
-    levels = solve_at(parts, field_mT)
+def _at_fixed_field(parts: Blocks, sweep: Sweep, reach_MHz: float) -> Found:
+    """Every transition within reach of the electron's own frequency; those of the nuclei lie far below."""
+    levels = solve_at(parts, sweep.centre_mT)
     results = []
     for lower in range(len(parts.raised)):
         gap = _difference(levels.energy_MHz, lower)
-        i, j = np.nonzero((levels.strength[lower] > WEAKEST) & (gap > 0))
+        i, j = np.nonzero((levels.strength[lower] > WEAKEST) & (np.abs(gap - sweep.centre) < reach_MHz))
         results.append((gap[i, j], levels.strength[lower][i, j], _labels(parts, levels, lower, i, j)))
     return _joined(results, parts.twice_m[0].shape[1])
 

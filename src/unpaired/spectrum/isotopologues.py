@@ -10,21 +10,23 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any, Literal
+from typing import Any
 
 from ..constants import CODATA_EDITION, ELECTRON_G, MHZ_PER_MT
-from ..errors import ChoiceError, InputError, nearest
+from ..errors import ChoiceError, InputError, nearest, require_choice
+from ..flag import SEVERITIES
 from ..nuclei import Isotope, isotope, natural_composition
 from ..result import Result, Row
 from ..spinsystem import SpinGroup, SpinNucleus, SpinSystem, Tensor
 
-CouplingKind = Literal["averaged", "equilibrium"]
+COUPLING_KINDS = ("averaged", "equilibrium")
 
 MIXTURE_BELOW = 0.9
 """An element whose most abundant isotope (spinless ones together) falls below this share is a mixture by
 default: B, Cl, Br among the common ones."""
 SMALLEST_SHARE = 1e-4
 """Isotopologues of default mixtures below this share are left out."""
+MOST_NAMED = 6
 AVERAGED_COLUMN = "a_averaged_mT"
 TENSOR_COLUMNS = tuple(tuple(f"t_{min(a, b)}{max(a, b)}_MHz" for b in "xyz") for a in "xyz")
 
@@ -51,7 +53,7 @@ class Question:
 
     level: str | None = None
     """Level id; None is the last of the recipe."""
-    coupling: CouplingKind = "averaged"
+    coupling: str = "averaged"
     """Averaged couplings where the result has them, or equilibrium ones throughout."""
     labels: Mapping[str, str] | None = None
     """Atom label or element to isotope, beyond what the recipe names."""
@@ -69,6 +71,7 @@ def spin_systems(result: Result, question: Question) -> tuple[SpinSystem, ...]:
     share outside 0..1 and for a g that is not positive.
     """
     level = result.level_id(question.level)
+    require_choice("coupling", question.coupling, COUPLING_KINDS)
     if question.least_share is not None and not 0 < question.least_share < 1:
         raise InputError(
             f"the least share of an isotopologue lies between 0 and 1, found {question.least_share}"
@@ -102,7 +105,7 @@ def spin_systems(result: Result, question: Question) -> tuple[SpinSystem, ...]:
             isotopologue=_name(sites, choices, fixed),
             share=share,
             peak_to_peak_width_mT=question.width_mT,
-            provenance=_provenance(result, sites, kind),
+            provenance=_provenance(result, level, sites, kind),
         )
         for share, choices in chosen
     )
@@ -121,7 +124,7 @@ def g_of(result: Result, given: float | None) -> tuple[float, str]:
     return ELECTRON_G, f"free electron, {CODATA_EDITION}; not measured and not predicted"
 
 
-def sites_of(result: Result, level: str, coupling: CouplingKind) -> list[Site]:
+def sites_of(result: Result, level: str, coupling: str) -> list[Site]:
     """The groups of a level with their couplings."""
     members: dict[str, list[Row]] = {}
     for row in result.rows("couplings", level):
@@ -286,11 +289,49 @@ def _name(sites: Sequence[Site], choices: Sequence[Choice], fixed: Mapping[str, 
     return " ".join(parts) or "main"
 
 
-def _provenance(result: Result, sites: Sequence[Site], kind: str) -> dict[str, Any]:
-    entries: dict[str, Any] = dict(result.provenance)
+def _provenance(result: Result, level: str, sites: Sequence[Site], kind: str) -> dict[str, Any]:
+    """Versions and editions, what was found about the level (code and severity), and what was not averaged."""
+    findings = {
+        row["code"]: f"{row['code']} ({row['severity']})"
+        for row in sorted(result.rows("flags"), key=lambda row: SEVERITIES.index(row["severity"]))
+        if row["level"] in (None, level)
+    }  # of several severities of one code the worst stays
+    entries: dict[str, Any] = {**result.provenance, "findings": list(findings.values())}
     if kind == "averaged":
         entries["not_averaged"] = [site.atoms[0] for site in sites if not site.averaged]
     return entries
+
+
+def taken_notes(result: Result, systems: Sequence[SpinSystem]) -> list[str]:
+    """What was taken from a result, in sentences: level, couplings, g, isotopologues."""
+    first = systems[0]
+    couplings = f"{first.coupling_kind} couplings"
+    missing = first.provenance.get("not_averaged", ())
+    if missing:
+        couplings += f" (equilibrium ones, for want of an average, for {', '.join(missing)})"
+    notes = [
+        f"{result.radical}: level {first.level}, {couplings}",
+        f"{result.radical}: g = {first.g_iso:.6f} ({first.g_source})",
+    ]
+    if len(systems) == 1 and first.isotopologue != "main":
+        notes.append(f"{result.radical}: isotopologue {first.isotopologue}")
+    elif len(systems) > 1:
+        kept = sum(system.share for system in systems)
+        named = [f"{system.isotopologue} {100 * system.share:.2f} %" for system in systems[:MOST_NAMED]]
+        more = f", and {len(systems) - MOST_NAMED} more" if len(systems) > MOST_NAMED else ""
+        notes.append(
+            f"{result.radical}: {len(systems)} isotopologues with {100 * kept:.2f} % of the molecules: {'; '.join(named)}{more}"
+        )
+    doubts = first.provenance["findings"]
+    if doubts:
+        notes.append(f"{result.radical}: findings at this level: {', '.join(doubts)} (see the flags table)")
+    masses = mass_effect_missing(result, systems)
+    if masses:
+        notes.append(
+            f"{result.radical}: the average over the motion was made for another isotope of {', '.join(masses)}; "
+            "the effect of the mass on it is not included"
+        )
+    return notes
 
 
 def mass_effect_missing(result: Result, systems: Sequence[SpinSystem]) -> list[str]:

@@ -6,19 +6,18 @@ import csv
 import io
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
-from typing import Literal, get_args
 
 import numpy as np
 from numpy.typing import NDArray
 
-from ..errors import ChoiceError, InputError, nearest
+from ..errors import InputError, require_choice
 from ..nuclei import isotope
 from ..spinsystem import SpinSystem
 from .exact import exact_lines
 from .orders import close_pairs, first_order, second_order, second_order_size_mT
 from .splitting import Splitting, Sweep
 
-Order = Literal["auto", "exact", "second", "first"]
+ORDERS = ("auto", "exact", "second", "first")
 
 EXACT_STATES = 1024
 """Largest product space of the nuclei that is diagonalised."""
@@ -38,8 +37,6 @@ ABSENT = np.int16(-32768)
 class Lines:
     """A line list; arrays have one entry per line."""
 
-    axis: str
-    """`field_mT` or `frequency_MHz`."""
     position: NDArray[np.float64]
     """In the unit of the axis, ascending."""
     intensity: NDArray[np.float64]
@@ -50,8 +47,15 @@ class Lines:
     system: NDArray[np.intp]
     """Which of `systems` a line belongs to."""
     systems: tuple[SpinSystem, ...]
+    sweep: Sweep
+    """The experiment; g is that of the first system."""
     notes: tuple[str, ...]
     """How the positions were found, and what to know about them: sentences."""
+
+    @property
+    def axis(self) -> str:
+        """`field_mT` or `frequency_MHz`."""
+        return self.sweep.axis
 
     def __len__(self) -> int:
         return len(self.position)
@@ -63,7 +67,7 @@ def line_list(
     frequency_MHz: float | None = None,
     field_mT: float | None = None,
     width_mT: float,
-    order: Order = "auto",
+    order: str = "auto",
 ) -> Lines:
     """The lines of spin systems with weights, field swept at a frequency or frequency swept at a field.
 
@@ -71,11 +75,7 @@ def line_list(
     nuclei's product space has at most 1024 states, and takes second order otherwise. Raises InputError for an
     electron spin above 1/2, for widths and weights that are not positive, and where no line exists.
     """
-    if order not in get_args(Order):
-        raise ChoiceError(
-            f'order "{order}" does not exist{nearest(order, get_args(Order))} '
-            f"(there are {', '.join(get_args(Order))})"
-        )
+    require_choice("order", order, ORDERS)
     if not width_mT > 0:
         raise InputError(f"the peak-to-peak width must be positive, found {width_mT} mT")
     if any(not weight > 0 for _, weight in systems):
@@ -92,15 +92,28 @@ def line_list(
     shares = [weight / total for _, weight in systems]
     intensity = np.concatenate([part.intensity * share for part, share in zip(parts, shares, strict=True)])
     return Lines(
-        axis=parts[0].axis,
+        sweep=parts[0].sweep,
         position=position[sorting],
         intensity=intensity[sorting],
         groups=groups,
         twice_m=np.concatenate([_widened(part, groups) for part in parts])[sorting] if labelled else None,
         system=np.concatenate([np.full(len(part), k) for k, part in enumerate(parts)])[sorting],
         systems=tuple(system for system, _ in systems),
-        notes=tuple(dict.fromkeys(note for part in parts for note in part.notes)),
+        notes=tuple(_said_once(parts)),
     )
+
+
+def _said_once(parts: Sequence[Lines]) -> list[str]:
+    """The notes of all systems; how positions were found is said once for all that share it."""
+    shared: dict[str, list[str]] = {}
+    for part in parts:
+        shared.setdefault(part.notes[0], []).append(part.systems[0].name)
+    first = [
+        f"{names[0] if len(names) == 1 else f'all {len(names)} systems' if len(shared) == 1 else ', '.join(names)}"
+        f": {note}"
+        for note, names in shared.items()
+    ]
+    return first + [note for part in parts for note in part.notes[1:]]
 
 
 def splittings_of(system: SpinSystem) -> list[Splitting]:
@@ -149,7 +162,7 @@ def _widened(part: Lines, groups: tuple[str, ...]) -> NDArray[np.int16]:
     return wide
 
 
-def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: Order) -> Lines:
+def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: str) -> Lines:
     if system.electron_spin != 0.5:
         raise InputError(
             f"{system.radical} has S = {system.electron_spin:g}: its spectrum needs zero-field splitting, "
@@ -158,7 +171,7 @@ def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: Order) -> 
     everything = splittings_of(system)
     names = tuple(group.group for group in system.groups)
     taken, reason = _choice(everything, sweep, width_mT, order)
-    notes = [f"{system.name}: {reason}"]
+    notes = [reason]
     together = [[k] for k in range(len(names))] if taken == "first" else _joined_equals(system, everything)
     for members in together:
         if len(members) > 1:
@@ -190,7 +203,7 @@ def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: Order) -> 
         for column, members in enumerate(together):
             labels[:, members[0]] = twice_m[:, column]
     return Lines(
-        axis=sweep.axis,
+        sweep=sweep,
         position=position,
         intensity=intensity,
         groups=names,
@@ -201,9 +214,7 @@ def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: Order) -> 
     )
 
 
-def _choice(
-    splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, order: Order
-) -> tuple[Order, str]:
+def _choice(splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, order: str) -> tuple[str, str]:
     """The order to take, and a sentence that says why."""
     size = second_order_size_mT(splittings, sweep)
     states = int(np.prod([float(s.states) for s in splittings if abs(s.coupling_MHz) >= NO_SPLITTING_MHz]))
@@ -247,7 +258,7 @@ def _joined_equals(system: SpinSystem, splittings: Sequence[Splitting]) -> list[
 
 
 def _positions(
-    splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, order: Order
+    splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, order: str
 ) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.int16] | None]:
     """Positions, intensities and 2m per group; 2m is None if lines had to be joined."""
     position = np.array([sweep.centre])

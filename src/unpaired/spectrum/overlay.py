@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import csv
+import io
 from dataclasses import dataclass
 
 import numpy as np
@@ -77,6 +79,16 @@ def overlay(curve: Curve, measured: MeasuredCurve) -> Overlay:
         residual=float(np.sqrt(np.mean((y - fitted) ** 2) / np.mean(y**2))),
         correlation=float(np.corrcoef(y, fitted)[0, 1]),
     )
+
+
+def overlay_csv(fit: Overlay) -> str:
+    """Columns `field_mT` (or `frequency_MHz`), `signal` (calculated, shifted and scaled) and `measured`."""
+    buffer = io.StringIO()
+    writer = csv.writer(buffer, lineterminator="\n")
+    writer.writerow([fit.axis, "signal", "measured"])
+    columns = (fit.position.tolist(), fit.calculated.tolist(), fit.measured.tolist())
+    writer.writerows(zip(*columns, strict=True))
+    return buffer.getvalue()
 
 
 def _moved(curve: Curve, x: FloatArray, shift: float) -> FloatArray:
