@@ -64,8 +64,7 @@ class Levels:
 def exact_lines(splittings: Sequence[Splitting], sweep: Sweep) -> Found:
     """Positions (units of the axis), shares (sum 1) and 2m per group of every allowed line.
 
-    2m of a line is that of its largest component. Positions are good to about 1e-8 mT. A line list that stays
-    empty (a frequency below the zero-field splitting, say) comes back with no entries.
+    2m of a line is that of its largest component. Positions are good to about 1e-8 mT.
     """
     positions, weights, labels = [], [], []
     multiplets = [total_spin_counts(s.count, s.twice_spin) for s in splittings]
@@ -77,8 +76,7 @@ def exact_lines(splittings: Sequence[Splitting], sweep: Sweep) -> Found:
         weights.append(here[1] * ways)
         labels.append(here[2])
     weight = np.concatenate(weights)
-    total = weight.sum()
-    return np.concatenate(positions), weight / total if total else weight, np.concatenate(labels)
+    return np.concatenate(positions), weight / weight.sum(), np.concatenate(labels)
 
 
 def blocks(splittings: Sequence[Splitting], twice_js: Sequence[int], electron_MHz_per_mT: float) -> Blocks:

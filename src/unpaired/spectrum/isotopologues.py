@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from ..constants import CODATA_EDITION, ELECTRON_G, MHZ_PER_MT
-from ..errors import ChoiceError, InputError, nearest, require_choice
+from ..errors import ChoiceError, InputError, require_choice
 from ..flag import SEVERITIES
 from ..nuclei import Isotope, isotope, natural_composition
 from ..result import Result, Row
@@ -162,10 +162,9 @@ def _fixed_isotopes(result: Result, labels: Mapping[str, str]) -> dict[str, Isot
         chosen = isotope(name)
         atoms = [label] if label in known else [atom for atom in known if atom.rstrip("0123456789") == label]
         if not atoms:
-            allowed = [*known, *sorted(elements)]
             raise ChoiceError(
-                f'"{label}" is neither an atom nor an element of {result.radical}{nearest(label, allowed)} '
-                f"(there are {', '.join(allowed)})"
+                f'"{label}" is neither an atom nor an element of {result.radical} '
+                f"(there are {', '.join([*known, *sorted(elements)])})"
             )
         for atom in atoms:
             if chosen.element != atom.rstrip("0123456789"):
@@ -220,16 +219,16 @@ def _combinations(
 def _isotope_atoms(
     site: Site, choice: Choice, fixed: Mapping[str, Isotope]
 ) -> list[tuple[Isotope | None, list[str]]]:
-    """The atoms of a site by isotope: those with a spin come first among those that nobody fixed."""
-    by_name: dict[str | None, tuple[Isotope | None, list[str]]] = {}
-    for atom in site.atoms:
-        if atom in fixed:
-            by_name.setdefault(fixed[atom].name, (fixed[atom], []))[1].append(atom)
+    """The atoms of a site by isotope, by first atom; nuclei with a spin go first where nothing fixes a place."""
     free = [atom for atom in site.atoms if atom not in fixed]
+    kinds: dict[str, Isotope | None] = dict(fixed)
     for kind, number in sorted(choice, key=lambda pair: pair[0] is None):
         here, free = free[:number], free[number:]
-        by_name.setdefault(kind.name if kind else None, (kind, []))[1].extend(here)
-    return list(by_name.values())
+        kinds |= dict.fromkeys(here, kind)
+    found: dict[Isotope | None, list[str]] = {}
+    for atom in site.atoms:
+        found.setdefault(kinds.get(atom), []).append(atom)
+    return list(found.items())
 
 
 def _groups(
@@ -241,16 +240,15 @@ def _groups(
         if site.coupling_mT is None or site.table_isotope is None:
             raise InputError(_no_numbers(result, level))
         ratio = kind.nuclear_g / site.table_isotope.nuclear_g
-        ordered = [atom for atom in site.atoms if atom in atoms]
         coupling_mT = site.coupling_mT * ratio
         yield SpinGroup(
-            group=ordered[0],
+            group=atoms[0],
             isotope=kind.name,
             nuclear_spin=kind.spin,
-            count=len(ordered),
+            count=len(atoms),
             a_iso_MHz=coupling_mT * MHZ_PER_MT,
             a_iso_mT=coupling_mT,
-            nuclei=tuple(SpinNucleus(atom, _scaled(site.tensors[atom], ratio)) for atom in ordered),
+            nuclei=tuple(SpinNucleus(atom, _scaled(site.tensors[atom], ratio)) for atom in atoms),
         )
 
 
@@ -320,7 +318,8 @@ def taken_notes(result: Result, systems: Sequence[SpinSystem]) -> list[str]:
         named = [f"{system.isotopologue} {100 * system.share:.2f} %" for system in systems[:MOST_NAMED]]
         more = f", and {len(systems) - MOST_NAMED} more" if len(systems) > MOST_NAMED else ""
         notes.append(
-            f"{result.radical}: {len(systems)} isotopologues with {100 * kept:.2f} % of the molecules: {'; '.join(named)}{more}"
+            f"{result.radical}: {len(systems)} isotopologues with {100 * kept:.2f} % of the molecules: "
+            f"{'; '.join(named)}{more}"
         )
     doubts = first.provenance["findings"]
     if doubts:

@@ -73,7 +73,7 @@ def line_list(
 
     `order` "auto" diagonalises where second order could be seen (a*a/(2 B0) above 1 % of `width_mT`) and the
     nuclei's product space has at most 1024 states, and takes second order otherwise. Raises InputError for an
-    electron spin above 1/2, for widths and weights that are not positive, and where no line exists.
+    electron spin above 1/2 and for widths and weights that are not positive.
     """
     require_choice("order", order, ORDERS)
     if not width_mT > 0:
@@ -190,11 +190,6 @@ def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: str) -> Li
                 "close that second order mixes them; their fine structure is approximate (order exact has it)"
             )
     position, intensity, twice_m = _positions(joined, sweep, width_mT, taken)
-    if not len(position):
-        raise InputError(
-            f"{system.name}: no line exists at {sweep.frequency_MHz} MHz: the couplings alone split the "
-            "levels by more; raise the frequency"
-        )
     if twice_m is None:
         notes.append(f"{system.name}: too many lines to name; close ones are joined and m_I is left empty")
         labels = None

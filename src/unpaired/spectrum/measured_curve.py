@@ -19,8 +19,10 @@ FEWEST_POINTS = 8
 UNITS = {"mT": 1.0, "T": 1e3, "G": 0.1, "Gauss": 0.1, "gauss": 0.1, "MHz": 1.0, "GHz": 1e3}
 """Unit in a heading to mT or MHz."""
 FREQUENCIES = ("MHz", "GHz")
-_FIELD_UNIT = re.compile(r"(?:^|[\[(/_,;]|\bfield|\bB)\s*(mT|T|Gauss|gauss|G)(?![A-Za-z])", re.ASCII)
-_FREQUENCY_UNIT = re.compile(r"freq\w*?[\s_\[(/,]*(MHz|GHz)(?![A-Za-z])", re.ASCII)
+_FIELD_UNIT = re.compile(
+    r"(?:^(?=\w+\s*(?:[;,\t]|$))|[\[(/_,;]|\b[Ff]ield|\bB)\s*(mT|T|Gauss|gauss|G)(?![A-Za-z])", re.ASCII
+)
+_FREQUENCY_UNIT = re.compile(r"[Ff]req\w*?[\s_\[(/,]*(MHz|GHz)(?![A-Za-z])", re.ASCII)
 _NUMBER = re.compile(r"[+-]?(\d+([.,]\d*)?|[.,]\d+)([eEdD][+-]?\d+)?")
 
 
