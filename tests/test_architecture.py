@@ -28,6 +28,9 @@ store
 execute
 study
 report tables
+spinsystem
+spectrum
+figures
 """
 """From the bottom up. A package counts as one line; a module that is not here belongs above all of these."""
 
