@@ -14,14 +14,14 @@ MAP = """
 errors constants columns version flag
 files machine minimal tight
 molecule level
-point state
+point state settled
 nuclei catalogue
 structures
 recipe
 electronic
 properties
 motion
-diagnostics
+diagnostics settle ensemble
 result
 origin analysis
 store

@@ -9,7 +9,7 @@ from pathlib import Path
 from typing import Protocol
 
 from . import machine
-from .errors import InputError, StoreError
+from .errors import CalculationError, InputError, StoreError
 from .execute import ADVICE, Here, Outcome, Pool, Solve, StoredSolve, Submitter, attempt, run_points
 from .files import require_writable
 from .forecast import require_memory
@@ -17,6 +17,7 @@ from .point import Point
 from .recipe.load import load_recipes
 from .report import full_report
 from .result import Result
+from .settle import settle
 from .state import Failure, State
 from .store import Store
 from .study import Plan, assemble, plan
@@ -67,29 +68,48 @@ class Campaign:
 
         On KeyboardInterrupt the finished levels are written and the interrupt goes on.
         """
-        plans = self.plans
+        failures: list[str] = []
+        plans = self._settled(failures)
         places = [
-            (which, level) for which, planned in enumerate(plans) for level in range(len(planned.points))
+            (which, place) for which, planned in enumerate(plans) for place in range(len(planned.every_point))
         ]
         outcomes: list[dict[int, Outcome]] = [{} for _ in plans]
-        failures: list[str] = []
 
         def done(place: int, outcome: Outcome) -> None:
             which, level = places[place]
             outcomes[which][level] = outcome
             self.watcher.show(f"{sum(map(len, outcomes))} of {len(places)} levels done")
-            if len(outcomes[which]) == len(plans[which].points):
+            if len(outcomes[which]) == len(plans[which].every_point):
                 failures.extend(self._finish(plans[which], outcomes[which], print_result))
 
-        points = [plans[which].points[level] for which, level in places]
+        points = [plans[which].every_point[level] for which, level in places]
         try:
             self._run_points(points, [plans[which].recipe.radical for which, _ in places], done)
         except KeyboardInterrupt:
             for planned, found in zip(plans, outcomes, strict=True):
-                if found and len(found) < len(planned.points):
+                if found and len(found) < len(planned.every_point):
                     self._finish(planned, found, print_result)
             raise
         return "\n".join(failures)
+
+    def _settled(self, failures: list[str]) -> list[Plan]:
+        """Plans at settled structures; a recipe whose structure cannot be settled becomes a sentence."""
+        plans = []
+        for before in self.plans:
+            recipe = before.recipe
+            try:
+                plans.append(plan(recipe, settle(recipe, self._walking(recipe.radical), self.store.folder)))
+            except CalculationError as error:
+                failures.append(f"{recipe.radical}: {error.message}")
+        return plans
+
+    def _walking(self, radical: str) -> Callable[[str, int, float, float], None]:
+        """Progress of a relaxation."""
+
+        def report(stage: str, step: int, energy_Eh: float, gradient: float) -> None:
+            self.watcher.show(f"{radical}  {stage}  step {step}  {energy_Eh:.6f} Eh  gradient {gradient:.1e}")
+
+        return report
 
     def _run_points(
         self, points: Sequence[Point], names: Sequence[str], done: Callable[[int, Outcome], None]
@@ -130,7 +150,7 @@ class Campaign:
     ) -> list[str]:
         """Write and print one radical; returns its failures in words."""
         missing = Failure("interrupted", "interrupted before this level ended", ADVICE["interrupted"])
-        outcomes = [found.get(level, missing) for level in range(len(planned.points))]
+        outcomes = [found.get(level, missing) for level in range(len(planned.every_point))]
         result = assemble(planned, outcomes)
         print_result(full_report(result) + "\n")
         failures = _failures(result, planned, outcomes)
@@ -146,7 +166,7 @@ def _failures(result: Result, planned: Plan, outcomes: Sequence[Outcome]) -> lis
     return [
         f"{result.radical} {point.level.id}: {outcome.message}"
         + (f"; {outcome.advice}" if outcome.advice else "")
-        for point, outcome in zip(planned.points, outcomes, strict=True)
+        for point, outcome in zip(planned.every_point, outcomes, strict=True)
         if isinstance(outcome, Failure)
     ]
 

@@ -46,6 +46,11 @@ TABLES: dict[str, tuple[Column, ...]] = {
         ("a_iso_MHz", "MHz", "isotropic hyperfine coupling, signed"),
         ("a_iso_mT", "mT", "the same in field units at g_e"),
         ("a_group_mT", "mT", "mean over the group, the value that an averaged spectrum shows"),
+        (
+            "a_averaged_mT",
+            "mT",
+            "thermal mean over conformers and their equal copies; empty if there is one conformer",
+        ),
         ("direct_mT", "mT", "part of a_iso_mT that the singly occupied orbitals make themselves"),
         ("polarisation_mT", "mT", "the rest: spin polarisation of paired electrons, 0 for ROHF and ROKS"),
         ("a_iso_projected_MHz", "MHz", "a_iso of the pure-spin part; UHF only, else empty"),
@@ -78,6 +83,8 @@ TABLES: dict[str, tuple[Column, ...]] = {
         ("wall_s", "s", "wall time of the original calculation"),
         ("pure_spin_weight", "", "weight of spin S in the determinant; UHF only, else empty"),
         ("s_squared_without_next_spin", "", "<S^2> with the part of spin S+1 removed; UHF only, else empty"),
+        ("minimum", "", "true if the structure is a proven minimum, false for a saddle; empty if unknown"),
+        ("lowest_mode_cm", "cm^-1", "lowest vibration of the structure; negative stands for imaginary"),
         _FLAGS,
     ),
     "polarisation": _block(
@@ -96,6 +103,22 @@ TABLES: dict[str, tuple[Column, ...]] = {
             "alpha minus beta electrons in the atom's intrinsic orbitals; they sum to 2S",
         ),
         ("pi_spin_population", "", "the part in p functions that leave the plane; empty without a plane"),
+    ),
+    "conformers": _block(
+        *_LEVEL,
+        ("conformer", "", "1 is the lowest, the structure of structure.xyz"),
+        ("relative_kJ_mol", "kJ/mol", "electronic energy above the lowest, at the level of the relaxation"),
+        ("zero_point_kJ_mol", "kJ/mol", "harmonic zero-point energy; empty without a full Hessian"),
+        (
+            "weight",
+            "",
+            "share at temperature_K, equal copies counted; with zero-point energy if all have one",
+        ),
+        ("minimum", "", "true if the curvature of this conformer is proven positive"),
+        ("lowest_mode_cm", "cm^-1", "its lowest vibration; negative stands for imaginary"),
+        ("atom", "", "element and 1-based place"),
+        ("isotope", "", "isotope whose moment is used"),
+        ("a_iso_mT", "mT", "isotropic hyperfine coupling in this conformer, signed"),
     ),
     "flags": _block(
         *_LEVEL,

@@ -8,7 +8,7 @@ from functools import partial
 from typing import Any
 
 from . import analysis, columns
-from .errors import StructureError
+from .ensemble import averaged_mT, conformer_rows
 from .execute import Outcome, Solve, attempt
 from .flag import Flag, join_codes
 from .level import Level
@@ -17,6 +17,8 @@ from .nuclei import table_isotope
 from .point import Point
 from .recipe.recipe import Recipe
 from .result import Result, Row
+from .settle import settle, unsettled
+from .settled import Settled
 from .state import Failure
 from .structures.groups import Group, find_groups
 
@@ -35,19 +37,36 @@ class Plan:
     isotopes: tuple[str | None, ...]
     """Isotope per atom; None for an element without a tabulated magnetic isotope."""
     groups: tuple[Group, ...]
+    settled: Settled
+    others: tuple[Point, ...] = ()
+    """The same levels at every further conformer, conformer by conformer."""
+
+    @property
+    def every_point(self) -> tuple[Point, ...]:
+        """All that is asked of the engine: `points`, then `others`."""
+        return self.points + self.others
 
 
-def plan(recipe: Recipe) -> Plan:
-    """Settle the structure and list the points. Raises InputError if the structure cannot be used."""
-    if recipe.molecule is None:
-        raise StructureError(f"{recipe.path}: structures from SMILES are not built yet, give a file")
-    molecule = recipe.molecule
+def plan(recipe: Recipe, settled: Settled | None = None) -> Plan:
+    """List the points of a settled recipe; without one, of the structure before it is relaxed.
+
+    Raises InputError if the structure cannot be used.
+    """
+    if settled is None:
+        settled = unsettled(recipe)
+    molecule = settled.molecule
     isotopes = isotopes_of(molecule, recipe.isotopes)
     return Plan(
         recipe=recipe,
         molecule=molecule,
-        structure_note=f"{recipe.radical}, positions from {recipe.structure}",
+        structure_note=settled.note,
         points=tuple(Point(molecule, level, recipe.solvent) for level in recipe.levels),
+        settled=settled,
+        others=tuple(
+            Point(conformer.molecule, level, recipe.solvent)
+            for conformer in settled.conformers[1:]
+            for level in recipe.levels
+        ),
         isotopes=isotopes,
         groups=find_groups(molecule, isotopes, recipe.groups),
     )
@@ -72,25 +91,31 @@ def study(recipe: Recipe, solve: Solve | None = None, execute: MapLike = map) ->
         from .electronic.solve import solve as engine
 
         solve = engine
-    planned = plan(recipe)
-    return assemble(planned, list(execute(partial(attempt, solve), planned.points)))
+    planned = plan(recipe, settle(recipe))
+    return assemble(planned, list(execute(partial(attempt, solve), planned.every_point)))
 
 
 def assemble(planned: Plan, outcomes: Sequence[Outcome]) -> Result:
-    """The record from the outcomes of a plan's points, in their order."""
+    """The record from the outcomes of every point of a plan, in their order."""
     tables: dict[str, list[dict[str, Any]]] = {name: [] for name in columns.TABLES}
     details: dict[str, Any] = {}
-    flags: list[Flag] = []
-    for point, outcome in zip(planned.points, outcomes, strict=True):
+    settled = planned.settled
+    flags: list[Flag] = list(settled.flags)
+    if len(outcomes) != len(planned.every_point):
+        raise ValueError(f"{len(outcomes)} outcomes for {len(planned.every_point)} points")
+    for place, (point, outcome) in enumerate(zip(planned.points, outcomes, strict=False)):
         if isinstance(outcome, Failure):
             part = _failed(planned, point, outcome)
         else:
             part = analysis.analyse(point, outcome, planned.groups, planned.isotopes)
         flags += part.flags
         details[point.level.id] = part.details
+        for row in part.tables["states"]:
+            row |= {"minimum": settled.minimum, "lowest_mode_cm": settled.lowest_mode_cm}
+        _add_conformers(part, planned, outcomes[place :: len(planned.points)])
         for name, rows in part.tables.items():
             tables[name] += [_common(planned, point.level, name) | row for row in rows]
-    flags += analysis.across_levels(planned.points, outcomes)
+    flags += analysis.across_levels(planned.points, outcomes[: len(planned.points)])
     _attach(tables, flags)
     tables["flags"] = [flag.row(planned.recipe.radical) for flag in flags]
     return Result(
@@ -99,7 +124,7 @@ def assemble(planned: Plan, outcomes: Sequence[Outcome]) -> Result:
         molecule=planned.molecule,
         tables={name: tuple(_ordered(name, row) for row in rows) for name, rows in tables.items()},
         details=details,
-        provenance=provenance(),
+        provenance=provenance() | _how_settled(settled),
         structure_note=planned.structure_note,
     )
 
@@ -118,6 +143,32 @@ def provenance() -> dict[str, Any]:
         "constants": CODATA_EDITION,
         "isotopes": ISOTOPE_EDITION,
     }
+
+
+def _how_settled(settled: Settled) -> dict[str, Any]:
+    """What the record keeps of the settling, nothing for a structure that was taken as it is."""
+    if not settled.conformers:
+        return {}
+    return {
+        "structure": {
+            "story": list(settled.story),
+            "wall_s": dict(settled.seconds),
+            "weights_with_zero_point_energy": settled.with_zero_point,
+            "conformers": [conformer.molecule.to_dict() for conformer in settled.conformers],
+        }
+    }
+
+
+def _add_conformers(part: analysis.Part, planned: Plan, outcomes: Sequence[Outcome]) -> None:
+    """Rows per conformer and the thermal means, where there are several conformers."""
+    settled = planned.settled
+    if len(settled.conformers) < 2:
+        return
+    part.tables["conformers"] = conformer_rows(settled, outcomes, planned.isotopes)
+    means = averaged_mT(settled, outcomes, planned.isotopes, planned.groups)
+    if means is not None:
+        for row, mean in zip(part.tables["couplings"], means, strict=True):
+            row["a_averaged_mT"] = mean
 
 
 def _failed(planned: Plan, point: Point, outcome: Failure) -> analysis.Part:

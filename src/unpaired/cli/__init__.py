@@ -20,6 +20,7 @@ from .export import export
 from .nuclei import nuclei
 from .run import run
 from .spectrum import spectrum
+from .structure import structure
 from .table import table
 
 _Parameters = ParamSpec("_Parameters")
@@ -62,7 +63,7 @@ def _with_exit_status(command: Callable[_Parameters, None]) -> Callable[_Paramet
     return run
 
 
-for _command in (run, check, table, spectrum, export, nuclei):
+for _command in (run, check, table, structure, spectrum, export, nuclei):
     app.command()(_with_exit_status(_command))
 
 

@@ -6,8 +6,6 @@ Delete a line when the feature lands; nothing else needs to change here.
 from __future__ import annotations
 
 NOT_BUILT: dict[str, str] = {
-    "structure.smiles": "starting from SMILES",
-    "relax": "relaxing the structure",
     "motion.rotors": "leaving freely turning groups frozen",
     "motion.inversion": "averaging over inversion",
     "motion.torsion": "averaging over torsion",
@@ -17,8 +15,6 @@ NOT_BUILT: dict[str, str] = {
 """What each feature does, by the key that asks for it."""
 
 INSTEAD: dict[str, str] = {
-    "structure.smiles": "give a structure file",
-    "relax": "leave the key out and give a relaxed structure file",
 }
 
 

@@ -9,6 +9,7 @@ from ..errors import RecipeError, StructureError, nearest
 from ..molecule import ATOMIC_NUMBER, Molecule
 from ..structures.file import SUFFIXES, read_structure
 from ..structures.geometry import Geometry
+from ..structures.smiles import Drawing, read_smiles
 from .document import NodeMap, Problems, Scalar, found, read_document
 from .experiment import read_g, read_measured, read_temperature
 from .features import not_built
@@ -81,7 +82,11 @@ def _read(path: Path, problems: Problems) -> tuple[Recipe | None, str | None, in
     recipe = Section(top, "", problems, KEYS)
     name = _name(recipe)
     structure, smiles = _where(recipe)
-    geometry = _geometry(recipe, path.parent / structure) if structure is not None else None
+    geometry: Geometry | Drawing | None = None
+    if structure is not None:
+        geometry = _geometry(recipe, path.parent / structure)
+    elif smiles is not None:
+        geometry = _drawing(recipe, smiles)
     elements = geometry.elements if geometry else None
     charge = _charge(recipe, geometry)
     multiplicity = _multiplicity(recipe, geometry, charge)
@@ -103,7 +108,7 @@ def _read(path: Path, problems: Problems) -> tuple[Recipe | None, str | None, in
     if problems.found or name is None or charge is None or multiplicity is None:
         return None, name, line
     molecule = None
-    if geometry is not None:
+    if isinstance(geometry, Geometry):
         molecule = Molecule(geometry.elements, geometry.coordinates_bohr, charge, multiplicity)
     return (
         Recipe(
@@ -158,11 +163,7 @@ def _where(recipe: Section) -> tuple[str | None, str | None]:
     section = Section(node, "structure", recipe.problems, ("smiles",))
     if not section.require("smiles", 'text such as "[CH3]"'):
         return None, None
-    smiles = section.text("smiles", 'text such as "[CH3]"')
-    if smiles is not None and (refusal := not_built("structure.smiles")):
-        section.refuse("smiles", refusal)
-        return None, None
-    return None, smiles
+    return None, section.text("smiles", 'text such as "[CH3]"')
 
 
 def _geometry(recipe: Section, path: Path) -> Geometry | None:
@@ -193,7 +194,15 @@ def _is_file(path: Path) -> bool:
         return False
 
 
-def _charge(recipe: Section, geometry: Geometry | None) -> int | None:
+def _drawing(recipe: Section, smiles: str) -> Drawing | None:
+    try:
+        return read_smiles(smiles)
+    except StructureError as error:
+        recipe.refuse("structure", error.message)
+        return None
+
+
+def _charge(recipe: Section, geometry: Geometry | Drawing | None) -> int | None:
     stated = geometry.charge if geometry else None
     if "charge" not in recipe:
         return stated or 0
@@ -207,7 +216,7 @@ def _charge(recipe: Section, geometry: Geometry | None) -> int | None:
     return charge
 
 
-def _multiplicity(recipe: Section, geometry: Geometry | None, charge: int | None) -> int | None:
+def _multiplicity(recipe: Section, geometry: Geometry | Drawing | None, charge: int | None) -> int | None:
     """2S+1, checked against the number of electrons."""
     rule = "2S+1, one more than the number of unpaired electrons"
     asked = recipe.integer("multiplicity", f"a whole number from 2 upwards ({rule})")

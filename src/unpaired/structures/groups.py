@@ -47,8 +47,8 @@ def find_groups(
     elements, coordinates = molecule.elements, molecule.coordinates_angstrom
     frozen = equivalence(elements, coordinates)
     rotors = freely_turning(molecule)
-    turning = _united([*frozen, *_turning_sets(molecule, rotors)]) if rotors else frozen
-    final = _united([*turning, *(_atoms_of(labels, molecule) for labels in extra)])
+    turning = united([*frozen, *_turning_sets(molecule, rotors)]) if rotors else frozen
+    final = united([*turning, *(_atoms_of(labels, molecule) for labels in extra)])
     groups = []
     for sites in final:
         origin: Origin = "user"
@@ -130,8 +130,8 @@ def _atoms_of(labels: Sequence[str], molecule: Molecule) -> tuple[int, ...]:
     return tuple(sorted(set(atoms)))
 
 
-def _united(sets: Sequence[tuple[int, ...]]) -> list[tuple[int, ...]]:
-    """The sets, those with common atoms united, each ascending."""
+def united(sets: Sequence[tuple[int, ...]]) -> list[tuple[int, ...]]:
+    """The sets, those with common atoms united, each ascending, sorted by their first atom."""
     united: list[set[int]] = []
     for members in sets:
         joined = set(members)

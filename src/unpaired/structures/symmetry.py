@@ -54,6 +54,14 @@ def permutations(
     so images of one well-chosen pair are tried and each candidate is fitted to all atoms.
     """
     points = np.asarray(coordinates_angstrom, dtype=np.float64).reshape(-1, 3)
+    for permutation, _ in _fitted(kinds, points, rms_angstrom, max_angstrom):
+        yield permutation
+
+
+def _fitted(
+    kinds: Sequence[object], points: Floats, rms_angstrom: float, max_angstrom: float
+) -> Iterator[tuple[Permutation, Floats]]:
+    """Permutations within the tolerances and the orthogonal matrices about the centre that belong to them."""
     numbers = {kind: place for place, kind in enumerate(dict.fromkeys(kinds))}
     types = np.array([numbers[kind] for kind in kinds])
     points = points - points.mean(axis=0)
@@ -64,7 +72,7 @@ def permutations(
         fitted = _fit(points, points[permutation], np.sign(np.linalg.det(operation)))
         miss = np.sqrt(((points @ fitted.T - points[permutation]) ** 2).sum(axis=1))
         if miss.max() <= max_angstrom and np.sqrt((miss**2).mean()) <= rms_angstrom:
-            yield permutation
+            yield permutation, fitted
 
 
 def _candidates(types: NDArray[np.intp], points: Floats, tolerance: float) -> Iterator[Floats]:
@@ -156,3 +164,45 @@ def _fit(points: Floats, targets: Floats, hand: float) -> Floats:
     left, _, right = np.linalg.svd(targets.T @ points)
     turn = np.diag([1.0, 1.0, hand * np.sign(np.linalg.det(left @ right))])
     return np.asarray(left @ turn @ right)
+
+
+def operations(
+    kinds: Sequence[object],
+    coordinates_angstrom: Floats,
+    rms_angstrom: float = RMS_ANGSTROM,
+    max_angstrom: float = MAX_ANGSTROM,
+) -> list[tuple[Permutation, Floats]]:
+    """Distinct operations as (permutation, orthogonal matrix about the centre), the identity among them.
+
+    A planar structure has its reflection as an operation of its own although it moves no atom; of a linear
+    structure only those that change atoms are listed. The length of the list is the order of the point group.
+    """
+    points = np.asarray(coordinates_angstrom, dtype=np.float64).reshape(-1, 3)
+    found: dict[tuple[bytes, bool], tuple[Permutation, Floats]] = {}
+    for permutation, matrix in _fitted(kinds, points, rms_angstrom, max_angstrom):
+        found.setdefault((permutation.tobytes(), np.linalg.det(matrix) > 0), (permutation, matrix))
+    return list(found.values())
+
+
+def symmetrised(
+    kinds: Sequence[object],
+    coordinates_angstrom: Floats,
+    rms_angstrom: float = RMS_ANGSTROM,
+    max_angstrom: float = MAX_ANGSTROM,
+) -> Floats:
+    """The nearby structure (atoms, 3) that has the operations of this one exactly, its centre in the same place.
+
+    The mean over all operations, repeated because the fitted operations are a group only in the limit.
+    """
+    points = np.asarray(coordinates_angstrom, dtype=np.float64).reshape(-1, 3)
+    centre = points.mean(axis=0)
+    points = points - centre
+    for _ in range(20):
+        found = operations(kinds, points, rms_angstrom, max_angstrom)
+        images = [points[permutation] @ matrix for permutation, matrix in found]
+        mean = np.asarray(np.mean(images, axis=0))
+        moved = abs(mean - points).max()
+        points = mean
+        if moved < 1e-12:
+            break
+    return np.asarray(points + centre)

@@ -1,0 +1,152 @@
+"""Energies and gradients of one molecule at one level: the surface on which it is relaxed."""
+
+from __future__ import annotations
+
+import hashlib
+import io
+import json
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..errors import ConvergenceError
+from ..files import write_atomically
+from ..level import Level
+from ..molecule import Molecule
+from ..point import Point, Solvent
+from .meanfield import mean_field
+from .mole import build_mole
+from .settings import Settings, identity
+
+Floats = NDArray[np.float64]
+Report = Callable[[str, int, float, float], None]
+"""Called with (stage, step, energy_Eh, largest gradient component in Eh/bohr) after every step."""
+
+RELAXATION = Settings("def2-universal-jkfit", 2, 1e-9, 1e-5)
+"""Fitting, grid and thresholds of relaxations: a coarser grid makes the gradient rougher than the relaxation needs."""
+
+NEAR_BOHR = 0.6
+"""The last density starts the next step if no nucleus has moved farther."""
+_ROUND = 8
+"""Decimals of a bohr that tell two geometries apart."""
+
+
+class Surface:
+    """Calling it with coordinates (atoms, 3) in bohr gives (energy in Eh, gradient (atoms, 3) in Eh/bohr).
+
+    With a folder every answer is kept there as a small JSON file and the last density beside it, so that a repeated
+    relaxation replays the steps already done and a kill loses one step at most.
+    """
+
+    def __init__(
+        self,
+        molecule: Molecule,
+        level: Level,
+        solvent: Solvent | None = None,
+        folder: Path | None = None,
+        settings: Settings = RELAXATION,
+    ) -> None:
+        self.molecule = molecule
+        self.level = level
+        self.solvent = solvent
+        self.settings = settings
+        self.computed = 0
+        """Gradients computed by this object, replayed ones not counted."""
+        self._last: tuple[Floats, Floats] | None = None
+        """Coordinates and density of the last step."""
+        self._folder = folder / f"surface-{self._key()[:16]}" if folder is not None else None
+
+    def _key(self) -> str:
+        question = {
+            "elements": self.molecule.elements,
+            "charge": self.molecule.charge,
+            "multiplicity": self.molecule.multiplicity,
+            "level": self.level.to_dict(),
+            "dielectric": self.solvent.dielectric if self.solvent else None,
+            "settings": vars(self.settings),
+            "engine": identity(self.level),
+        }
+        return hashlib.sha256(json.dumps(question, sort_keys=True).encode()).hexdigest()
+
+    def __call__(self, coordinates_bohr: Floats) -> tuple[float, Floats]:
+        coordinates = np.asarray(coordinates_bohr, dtype=np.float64).reshape(-1, 3)
+        known = self._recall(coordinates)
+        if known is not None:
+            return known
+        field = self.converged(coordinates)
+        gradient = np.asarray(field.nuc_grad_method().set(verbose=0).kernel())
+        self.computed += 1
+        self._remember(coordinates, float(field.e_tot), gradient)
+        return float(field.e_tot), gradient
+
+    def converged(self, coordinates_bohr: Floats) -> Any:
+        """A converged PySCF mean-field object at these coordinates, started from the last density.
+
+        Raises ConvergenceError if neither DIIS nor the second-order method converges.
+        """
+        field = self.field(coordinates_bohr)
+        guess = self._guess(coordinates_bohr, field.mol.nao)
+        field.kernel(dm0=guess)
+        if not field.converged and guess is not None:
+            field.kernel()
+        if not field.converged:
+            damped = self.field(coordinates_bohr)
+            damped.level_shift, damped.max_cycle = 0.3, 300
+            damped.kernel(dm0=field.make_rdm1())
+            field = self.field(coordinates_bohr)
+            field.kernel(dm0=damped.make_rdm1())
+        if not field.converged:
+            raise ConvergenceError(f"{self.level.id}: the self-consistent field did not converge on relaxing")
+        self._last = np.array(coordinates_bohr), np.asarray(field.make_rdm1())
+        return field
+
+    def field(self, coordinates_bohr: Floats) -> Any:
+        """An unconverged mean-field object at these coordinates."""
+        point = Point(self.molecule.moved(coordinates_bohr), self.level, self.solvent)
+        return mean_field(build_mole(point), self.level, self.solvent, self.settings)
+
+    # --- what is kept on disk ----------------------------------------
+
+    def _file(self, coordinates: Floats) -> Path:
+        assert self._folder is not None
+        rounded = np.round(coordinates, _ROUND) + 0.0
+        return self._folder / f"gradient-{hashlib.sha256(rounded.tobytes()).hexdigest()[:32]}.json"
+
+    def _recall(self, coordinates: Floats) -> tuple[float, Floats] | None:
+        if self._folder is None:
+            return None
+        try:
+            data = json.loads(self._file(coordinates).read_text())
+            return float(data["energy_Eh"]), np.array(data["gradient_Eh_bohr"], dtype=np.float64)
+        except (OSError, ValueError, KeyError):
+            return None
+
+    def _remember(self, coordinates: Floats, energy: float, gradient: Floats) -> None:
+        if self._folder is None or self._last is None:
+            return
+        data = {
+            "coordinates_bohr": coordinates.tolist(),
+            "energy_Eh": energy,
+            "gradient_Eh_bohr": gradient.tolist(),
+        }
+        write_atomically(self._file(coordinates), json.dumps(data))
+        buffer = io.BytesIO()
+        np.savez(buffer, coordinates_bohr=self._last[0], density=self._last[1])
+        write_atomically(self._folder / "density.npz", buffer.getvalue())
+
+    def _guess(self, coordinates: Floats, functions: int) -> Floats | None:
+        """The last density, of this object or stored, if it was found nearby."""
+        if self._last is None and self._folder is not None:
+            try:
+                with np.load(self._folder / "density.npz", allow_pickle=False) as data:
+                    self._last = np.array(data["coordinates_bohr"]), np.array(data["density"])
+            except (OSError, ValueError, KeyError):
+                return None
+        if self._last is None:
+            return None
+        where, density = self._last
+        near = where.shape == coordinates.shape and abs(where - coordinates).max() <= NEAR_BOHR
+        return density if near and density.shape == (2, functions, functions) else None

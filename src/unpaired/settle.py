@@ -1,0 +1,415 @@
+"""Settling a structure: from a drawing or a rough start to minima that are proven."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Sequence
+from dataclasses import dataclass, field, replace
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .constants import BOHR_ANGSTROM, HARTREE_KJ_MOL
+from .electronic.cost import basis_functions
+from .electronic.hessian import analytic_hessian, difference_hessian, hessian_product
+from .electronic.relax import LOOSE, TIGHT, Relaxed, relax
+from .electronic.settings import Settings
+from .electronic.surface import Report, Surface
+from .errors import CalculationError, ConvergenceError
+from .flag import Flag
+from .level import Level
+from .molecule import Molecule
+from .point import Point, Solvent
+from .recipe.recipe import Recipe
+from .settled import WINDOW_KJ_MOL, Conformer, Settled, relative_kJ_mol, weigh
+from .structures.conformers import SAME_Eh, alike_atoms, same_shape, starts
+from .structures.modes import FLAT_CM, lowest_mode, masses_u, normal_modes
+from .structures.smiles import Drawing, read_smiles
+from .structures.symmetry import operations, symmetrised
+
+Floats = NDArray[np.float64]
+
+ROUGH_BASIS = "pcseg-0"
+ROUGH = Settings("def2-universal-jkfit", 0, 1e-7, 1e-4)
+ROUGH_WINDOW_KJ_MOL = 25.0
+"""What the rough relaxation puts higher above the lowest is not relaxed further."""
+FULL_HESSIAN_FUNCTIONS = 75
+"""Up to this many basis functions the full analytic Hessian is the cheapest proof."""
+MODEL_HESSIAN_FUNCTIONS = 110
+"""Up to this many functions in ROUGH_BASIS its analytic Hessian is worth its time as a model."""
+ROUNDS = 4
+"""How often a negative mode is followed."""
+DOWNHILL_ANGSTROM = (0.15, 0.3)
+"""Largest displacement of an atom along a negative mode."""
+SYMMETRY_COST_Eh = 2e-6
+"""Energy by which the symmetrised structure may lie higher than the relaxed one."""
+
+
+@dataclass
+class _Work:
+    """What one settling has found so far."""
+
+    recipe: Recipe
+    level: Level
+    surface: Surface
+    report: Report | None
+    story: list[str] = field(default_factory=list)
+    seconds: dict[str, float] = field(default_factory=dict)
+
+    @property
+    def elements(self) -> tuple[str, ...]:
+        return self.surface.molecule.elements
+
+    def timed(self, stage: str, started: float) -> None:
+        self.seconds[stage] = self.seconds.get(stage, 0.0) + time.perf_counter() - started
+
+
+def settle(recipe: Recipe, report: Report | None = None, folder: Path | None = None) -> Settled:
+    """The structure of a recipe: as the file has it, or built, relaxed and proven.
+
+    `report(stage, step, energy_Eh, largest_gradient)` is called after every step. With a folder (OUT/.store)
+    every step is kept there, and a run that was killed goes on where it was. Raises StructureError for a
+    drawing that cannot be used and CalculationError if no start could be relaxed.
+    """
+    if recipe.smiles is not None:
+        return _from_drawing(recipe, read_smiles(recipe.smiles), report, folder)
+    if not recipe.relax:
+        return unsettled(recipe)
+    assert recipe.molecule is not None
+    begin = [recipe.molecule.coordinates_bohr]
+    return _relaxed(_work(recipe, recipe.molecule, report, folder), begin, f"from {recipe.structure}", None)
+
+
+def unsettled(recipe: Recipe) -> Settled:
+    """The structure before anything is relaxed: as the file has it, or the first start of the drawing."""
+    if recipe.molecule is not None:
+        said = f": {recipe.structure_comment}" if recipe.structure_comment else ""
+        return Settled(recipe.molecule, f"{recipe.radical}, positions from {recipe.structure}{said}")
+    assert recipe.smiles is not None
+    drawing = read_smiles(recipe.smiles)
+    coordinates = starts(drawing)[0] / BOHR_ANGSTROM
+    molecule = Molecule(drawing.elements, coordinates, recipe.charge, recipe.multiplicity)
+    return Settled(molecule, f"{recipe.radical}, drawn from SMILES {recipe.smiles}, not relaxed")
+
+
+def prove(recipe: Recipe, report: Report | None = None, folder: Path | None = None) -> Settled:
+    """Check the curvature of a recipe's structure file without moving a nucleus.
+
+    The level is the recipe's `relax` or the default one. Raises CalculationError.
+    """
+    assert recipe.molecule is not None
+    work = _work(recipe, recipe.molecule, report, folder)
+    coordinates = recipe.molecule.coordinates_bohr
+    energy, gradient = work.surface(coordinates)
+    work.story.append(
+        f"{work.level.id}: largest gradient {abs(gradient).max():.1e} Eh/bohr "
+        f"({'stationary' if abs(gradient).max() < 1e-3 else 'not relaxed at this level'})"
+    )
+    conformer, _ = _proven(work, Relaxed(coordinates, energy, float(abs(gradient).max()), 1))
+    note = f"{recipe.radical}, positions from {recipe.structure}"
+    return _settled(work, [conformer], note, None)
+
+
+def _work(recipe: Recipe, molecule: Molecule, report: Report | None, folder: Path | None) -> _Work:
+    from .recipe.levels import DEFAULT_RELAX
+
+    level = recipe.relax or DEFAULT_RELAX
+    return _Work(recipe, level, Surface(molecule, level, recipe.solvent, folder), report)
+
+
+def _from_drawing(recipe: Recipe, drawing: Drawing, report: Report | None, folder: Path | None) -> Settled:
+    started = time.perf_counter()
+    begin = [coordinates / BOHR_ANGSTROM for coordinates in starts(drawing)]
+    molecule = Molecule(drawing.elements, begin[0], recipe.charge, recipe.multiplicity)
+    work = _work(recipe, molecule, report, folder)
+    work.timed("drawing", started)
+    unpaired = recipe.multiplicity - 1
+    if drawing.open_valences != unpaired:
+        work.story.append(
+            f"the SMILES draws {drawing.open_valences} open valences, the multiplicity asks for {unpaired} "
+            "unpaired electrons"
+        )
+    begin = _rough(work, begin, recipe.solvent, folder)
+    return _relaxed(work, begin, f"from SMILES {drawing.smiles}", drawing)
+
+
+def _rough(
+    work: _Work, begin: Sequence[Floats], solvent: Solvent | None, folder: Path | None
+) -> list[Floats]:
+    """Starts after a quick relaxation in a small basis set, doubles and high ones removed, lowest first."""
+    if len(work.elements) < 3:
+        return list(begin)
+    started = time.perf_counter()
+    level = replace(work.level, basis=ROUGH_BASIS, name=None)
+    found: list[tuple[float, Floats]] = []
+    for place, coordinates in enumerate(begin, start=1):
+        # Every start has a surface of its own: the density of another shape is a poor guess.
+        surface = Surface(work.surface.molecule, level, solvent, folder, ROUGH)
+        try:
+            end = relax(
+                work.elements, coordinates, surface, LOOSE, work.report, f"rough {place}/{len(begin)}"
+            )
+        except CalculationError as error:
+            work.story.append(f"start {place}: {error.message}")
+            continue
+        found.append((end.energy_Eh, end.coordinates_bohr))
+    work.timed("rough relaxation", started)
+    if not found:
+        raise ConvergenceError(f"none of {len(begin)} starts could be relaxed roughly: {work.story[-1]}")
+    kept = _distinct(work.elements, found, ROUGH_WINDOW_KJ_MOL, loose=True)
+    work.story.append(
+        f"{len(begin)} starts, {len(kept)} of them distinct after a rough relaxation ({level.id})"
+    )
+    return [coordinates for _, coordinates in kept]
+
+
+def _distinct(
+    elements: Sequence[str], found: Sequence[tuple[float, Floats]], window_kJ_mol: float, loose: bool
+) -> list[tuple[float, Floats]]:
+    """The lowest of every shape within the window, by energy."""
+    energy_tolerance, shape_tolerance = (1e-3, 0.15) if loose else (SAME_Eh, 0.03)
+    kept: list[tuple[float, Floats]] = []
+    for energy, coordinates in sorted(found, key=lambda pair: pair[0]):
+        if (energy - kept[0][0] if kept else 0.0) * HARTREE_KJ_MOL > window_kJ_mol:
+            break
+        if not any(
+            abs(energy - other) < energy_tolerance
+            and same_shape(elements, coordinates * BOHR_ANGSTROM, known * BOHR_ANGSTROM, shape_tolerance)
+            for other, known in kept
+        ):
+            kept.append((energy, coordinates))
+    return kept
+
+
+def _relaxed(work: _Work, begin: Sequence[Floats], origin: str, drawing: Drawing | None) -> Settled:
+    """Relax every start at the full level, prove each, and keep the distinct minima within the window."""
+    found: list[Conformer] = []
+    for place, coordinates in enumerate(begin, start=1):
+        stage = f"relax {place}/{len(begin)}"
+        started = time.perf_counter()
+        try:
+            end = relax(work.elements, coordinates, work.surface, TIGHT, work.report, stage)
+        except CalculationError as error:
+            work.story.append(f"start {place}: {error.message}")
+            continue
+        finally:
+            work.timed("relaxation", started)
+        work.story.append(
+            f"start {place}: relaxed in {end.steps} steps to {end.energy_Eh:.6f} Eh "
+            f"(largest gradient {end.gradient_max:.0e} Eh/bohr)"
+        )
+        if _known(work, end, found):
+            work.story.append(f"start {place}: the same minimum as before")
+            continue
+        if found and (end.energy_Eh - found[0].energy_Eh) * HARTREE_KJ_MOL > WINDOW_KJ_MOL:
+            work.story.append(f"start {place}: more than {WINDOW_KJ_MOL:.0f} kJ/mol too high")
+            continue
+        conformer = _downhill(work, end, stage)
+        if not _known(work, conformer, found):
+            found.append(conformer)
+            found.sort(key=lambda one: one.energy_Eh)
+    if not found:
+        raise ConvergenceError(f"no start could be relaxed: {work.story[-1]}")
+    kept = [
+        conformer
+        for conformer, above in zip(found, relative_kJ_mol(found), strict=True)
+        if above <= WINDOW_KJ_MOL
+    ]
+    where = f"in {work.recipe.solvent.name}" if work.recipe.solvent else "gas phase"
+    note = (
+        f"{work.recipe.radical}, relaxed at {work.level.id} (density fitting, grid "
+        f"{work.surface.settings.grid_level}, {where}) {origin}, {kept[0].energy_Eh:.7f} Eh, "
+        f"{_in_words(kept[0])}"
+    )
+    return _settled(work, kept, note, drawing)
+
+
+def _in_words(conformer: Conformer) -> str:
+    if conformer.lowest_mode_cm is None:
+        return "no vibrations" if conformer.minimum else "curvature not checked"
+    kind = {True: "minimum", False: "not a minimum", None: "flat, perhaps not a minimum"}[conformer.minimum]
+    return f"{kind} (lowest mode {conformer.lowest_mode_cm:.0f} cm^-1)"
+
+
+def _known(work: _Work, one: Relaxed | Conformer, found: Sequence[Conformer]) -> bool:
+    coordinates = one.coordinates_bohr if isinstance(one, Relaxed) else one.molecule.coordinates_bohr
+    return any(
+        abs(one.energy_Eh - other.energy_Eh) < SAME_Eh
+        and same_shape(work.elements, coordinates * BOHR_ANGSTROM, other.molecule.coordinates_angstrom)
+        for other in found
+    )
+
+
+def _downhill(work: _Work, end: Relaxed, stage: str) -> Conformer:
+    """Prove a stationary structure; follow a negative mode and relax again until it is a minimum."""
+    end = _as_symmetric_as_it_is(work, end)
+    conformer, mode = _proven(work, end)
+    for turn in range(ROUNDS):
+        if conformer.minimum is not False or mode is None or conformer.lowest_mode_cm is None:
+            break
+        started = time.perf_counter()
+        work.story.append(
+            f"mode at {-conformer.lowest_mode_cm:.0f}i cm^-1: a saddle, followed downhill from "
+            f"{end.energy_Eh:.6f} Eh"
+        )
+        reach = DOWNHILL_ANGSTROM[min(turn, 1)] / BOHR_ANGSTROM / float(abs(mode).max())
+        aside = [end.coordinates_bohr + sign * reach * mode for sign in (1.0, -1.0)]
+        start = min(aside, key=lambda coordinates: work.surface(coordinates)[0])
+        end = relax(work.elements, start, work.surface, TIGHT, work.report, f"{stage} downhill")
+        work.timed("relaxation", started)
+        work.story.append(f"relaxed again in {end.steps} steps to {end.energy_Eh:.6f} Eh")
+        conformer, mode = _proven(work, end)
+    return conformer
+
+
+def _as_symmetric_as_it_is(work: _Work, end: Relaxed) -> Relaxed:
+    """The structure with its approximate symmetry made exact, if that costs no energy."""
+    angstrom = end.coordinates_bohr * BOHR_ANGSTROM
+    exact = symmetrised(work.elements, angstrom) / BOHR_ANGSTROM
+    if abs(exact - end.coordinates_bohr).max() < 1e-9:
+        return end
+    energy, gradient = work.surface(exact)
+    if energy > end.energy_Eh + SYMMETRY_COST_Eh:
+        return end
+    return Relaxed(exact, energy, float(abs(gradient).max()), end.steps + 1)
+
+
+def _proven(work: _Work, end: Relaxed) -> tuple[Conformer, Floats | None]:
+    """The structure with its lowest mode, and the mode's displacement (atoms, 3)."""
+    started = time.perf_counter()
+    coordinates = end.coordinates_bohr
+    molecule = work.surface.molecule.moved(coordinates)
+    order = len(operations(work.elements, molecule.coordinates_angstrom))
+    if len(work.elements) == 1:
+        return Conformer(molecule, end.energy_Eh, True, None, 0.0, order), None
+    masses = masses_u(work.elements)
+    functions = basis_functions(Point(molecule, work.level))
+    zero_point: float | None = None
+    if work.report is not None:
+        work.report("curvature", 0, end.energy_Eh, end.gradient_max)
+    if functions <= FULL_HESSIAN_FUNCTIONS or len(work.elements) <= 3:
+        hessian = analytic_hessian(work.surface, coordinates)
+        if hessian is None:
+            hessian = difference_hessian(work.surface, coordinates)
+        modes = normal_modes(hessian, coordinates, masses)
+        wavenumber, displacement = float(modes.wavenumbers_cm[0]), modes.displacements[0]
+        zero_point = modes.zero_point_Eh
+        how = "full Hessian"
+    else:
+        model, name = _model_hessian(work, molecule)
+        found = lowest_mode(hessian_product(work.surface, coordinates), model, coordinates, masses)
+        wavenumber, displacement = found.wavenumber_cm, found.displacement
+        how = (
+            f"iterated on {2 * found.products} gradients from {name}, residual {found.residual_cm:.0f} cm^-1"
+        )
+    work.timed("curvature", started)
+    minimum = None if abs(wavenumber) < FLAT_CM else wavenumber > 0
+    work.story.append(f"lowest mode {wavenumber:.0f} cm^-1 ({how})")
+    return Conformer(molecule, end.energy_Eh, minimum, wavenumber, zero_point, order), displacement
+
+
+def _model_hessian(work: _Work, molecule: Molecule) -> tuple[Floats, str]:
+    """A cheap Hessian that knows which directions are soft."""
+    level = replace(work.level, basis=ROUGH_BASIS, name=None)
+    surface = Surface(molecule, level, work.surface.solvent, None, ROUGH)
+    if basis_functions(Point(molecule, level)) <= MODEL_HESSIAN_FUNCTIONS:
+        hessian = analytic_hessian(surface, molecule.coordinates_bohr)
+        if hessian is not None:
+            return hessian, f"the Hessian in {ROUGH_BASIS}"
+    return 0.5 * np.eye(3 * len(molecule.elements)), "nothing"
+
+
+def _settled(work: _Work, kept: list[Conformer], note: str, drawing: Drawing | None) -> Settled:
+    weights, with_zero_point = weigh(kept, work.recipe.temperature_K)
+    lowest = kept[0]
+    flags = list(_flags(lowest))
+    jahn_teller = _jahn_teller(work, lowest)
+    if jahn_teller is not None:
+        flags.append(jahn_teller)
+    return Settled(
+        molecule=lowest.molecule,
+        note=note,
+        minimum=lowest.minimum,
+        lowest_mode_cm=lowest.lowest_mode_cm,
+        conformers=tuple(kept),
+        weights=weights,
+        with_zero_point=with_zero_point,
+        story=tuple(work.story),
+        flags=tuple(flags),
+        seconds=tuple(work.seconds.items()),
+        alike=alike_atoms(drawing, lowest.molecule) if drawing is not None else (),
+    )
+
+
+def _flags(lowest: Conformer) -> list[Flag]:
+    if lowest.minimum is False:
+        return [
+            Flag(
+                "saddle",
+                "bad",
+                "the structure is no minimum: couplings belong to a place where the radical is not; start "
+                "from another structure",
+                lowest.lowest_mode_cm,
+                0.0,
+            )
+        ]
+    if lowest.minimum is None:
+        return [
+            Flag(
+                "flat-mode",
+                "note",
+                "the softest motion is so flat that the curvature proves nothing; couplings that depend on it "
+                "need an average over it",
+                lowest.lowest_mode_cm,
+                FLAT_CM,
+            )
+        ]
+    return []
+
+
+JAHN_TELLER_MAX_ANGSTROM = 0.12
+JAHN_TELLER_GRADIENT = 2e-3
+"""Eh/bohr towards the minimum at the more symmetric structure. By symmetry it is zero unless the state is degenerate
+there; then the slope is linear (H. A. Jahn, E. Teller, Proc. R. Soc. A 161, 220 (1937))."""
+
+
+def _jahn_teller(work: _Work, lowest: Conformer) -> Flag | None:
+    """The flag of a minimum that is one of several around a degenerate, more symmetric structure."""
+    angstrom = lowest.molecule.coordinates_angstrom
+    wider = operations(work.elements, angstrom, JAHN_TELLER_MAX_ANGSTROM / 2, JAHN_TELLER_MAX_ANGSTROM)
+    threefold = any((_repeated(p) > 2) for p, _ in wider)
+    if len(wider) <= lowest.order or not threefold:
+        return None
+    centre = symmetrised(work.elements, angstrom, JAHN_TELLER_MAX_ANGSTROM / 2, JAHN_TELLER_MAX_ANGSTROM)
+    way = (angstrom - centre) / BOHR_ANGSTROM
+    try:
+        energy, gradient = work.surface(centre / BOHR_ANGSTROM)
+    except ConvergenceError:
+        return None
+    slope = float((gradient * way).sum() / np.linalg.norm(way))
+    if abs(slope) < JAHN_TELLER_GRADIENT:
+        return None
+    copies = len(wider) // lowest.order
+    depth = (energy - lowest.energy_Eh) * HARTREE_KJ_MOL
+    work.story.append(
+        f"the structure with {len(wider)} symmetry operations lies {depth:.1f} kJ/mol higher and slopes down "
+        "linearly: a Jahn-Teller distortion"
+    )
+    return Flag(
+        "jahn-teller",
+        "caution",
+        f"one of {copies} equal minima that interconvert (about {depth:.1f} kJ/mol below the symmetric structure): "
+        "a spectrum shows the mean; name the nuclei that become equal under groups:",
+        depth,
+        0.0,
+    )
+
+
+def _repeated(permutation: NDArray[np.intp]) -> int:
+    """How often a permutation must be repeated until every atom is back."""
+    start = np.arange(len(permutation))
+    image, times = permutation.copy(), 1
+    while (image != start).any():
+        image, times = permutation[image], times + 1
+    return times
