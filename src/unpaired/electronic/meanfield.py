@@ -11,8 +11,15 @@ from .settings import Settings
 
 
 def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Settings) -> Any:
-    """An unconverged mean-field object. Fitting comes before the continuum: the other order refuses gradients."""
+    """An unconverged mean-field object. Fitted first, continuum next: the other order refuses gradients.
+
+    Its grid sums and fitted contractions are this package's; all else, with what it hands on to gradients,
+    Hessians and second-order methods, is the library's.
+    """
     from pyscf import dft, scf
+
+    from .fitting import Fitting
+    from .grid import GridIntegration
 
     # the classes themselves: scf.UHF(mole) of one electron is a shortcut that ignores a continuum
     kinds = {"UHF": scf.uhf.UHF, "ROHF": scf.rohf.ROHF, "UKS": dft.uks.UKS, "ROKS": dft.roks.ROKS}
@@ -20,8 +27,9 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
     if level.is_kohn_sham:
         field.xc = level.functional
         field.grids = turned_grids(mole, settings.grid_level)
+        field._numint = GridIntegration()
     if settings.fitting_set is not None:
-        field = field.density_fit(auxbasis=settings.fitting_set)
+        field = field.density_fit(with_df=Fitting(mole, settings.fitting_set))
     if solvent is not None:
         field = field.PCM()
         field.with_solvent.method = "IEF-PCM"

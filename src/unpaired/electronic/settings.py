@@ -21,12 +21,16 @@ class Settings:
     """Exchange-correlation grid of the final energy and density."""
     energy_tolerance_Eh: float
     gradient_tolerance: float
+    start_grid_level: int | None = None
+    """Coarser grid on which the density is converged first; None for none."""
+    start_basis: str | None = None
+    """Small basis set in which the density is converged first of all; None for none."""
     max_iterations: int = 100
 
 
 SETTINGS = {
-    "quick": Settings("def2-universal-jkfit", 0, 1e-7, 1e-4),
-    "standard": Settings("def2-universal-jkfit", 1, 1e-9, 1e-5),
+    "quick": Settings("def2-universal-jkfit", 0, 1e-7, 1e-4, None, "pcseg-0"),
+    "standard": Settings("def2-universal-jkfit", 1, 1e-9, 1e-5, 0, "pcseg-0"),
     "reference": Settings(None, 4, 1e-10, 1e-6),
 }
 

@@ -16,6 +16,7 @@ from .converge import converge
 from .meanfield import mean_field
 from .mole import build_mole
 from .settings import settings
+from .start import initial_density
 
 Report = Callable[[str, int, float], None]
 """Called with (stage, iteration, energy_Eh) while a calculation runs."""
@@ -45,7 +46,7 @@ def _solve(point: Point, report: Report | None) -> State:
             report("scf", iterations, float(local["e_tot"]))
 
     field.callback = watch
-    used = converge(field, field.get_init_guess(key="minao"))
+    used = converge(field, initial_density(point, mole, setting, watch))
     if not field.converged:
         raise ConvergenceError(
             f"not converged after {iterations} iterations of {', then '.join(used)}; "
