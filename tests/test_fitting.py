@@ -5,8 +5,9 @@ import pytest
 from pyscf import df, gto, lib, scf
 
 from unpaired.electronic import fitting
+from unpaired.electronic.auxiliary import auxiliary_basis
 
-SET = "def2-universal-jkfit"
+SET = {element: auxiliary_basis("def2-universal-jkfit + free s, p", element) for element in "CHO"}
 
 
 @pytest.fixture(scope="module")

@@ -8,6 +8,7 @@ from unpaired.electronic import start
 from unpaired.electronic.meanfield import mean_field
 from unpaired.electronic.mole import build_mole
 from unpaired.electronic.settings import settings
+from unpaired.errors import ChoiceError
 from unpaired.level import Level
 from unpaired.molecule import Molecule
 from unpaired.point import Point
@@ -44,7 +45,7 @@ def test_start_saves_iterations_and_ends_in_the_same_state():
 
 def test_basis_without_a_small_one_starts_all_the_same(monkeypatch):
     def refuse(*_):
-        raise catalogue.ChoiceError("no such element")
+        raise ChoiceError("no such element")
 
     monkeypatch.setattr(catalogue, "check_basis", refuse)
     level = Level("UHF", "pcH-1")

@@ -92,5 +92,5 @@ def release() -> None:
 
 def _key(mol: Any, auxbasis: Any) -> str:
     """Everything that decides the integrals."""
-    text = repr((mol._atm.tolist(), mol._bas.tolist(), mol._env.tolist(), auxbasis))
+    text = repr((mol._atm.tolist(), mol._bas.tolist(), mol._env.tolist(), sorted(auxbasis.items())))
     return hashlib.sha256(text.encode()).hexdigest()

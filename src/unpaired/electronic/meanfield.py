@@ -18,6 +18,7 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
     """
     from pyscf import dft, scf
 
+    from .auxiliary import auxiliary_basis
     from .fitting import Fitting
     from .grid import GridIntegration
 
@@ -29,7 +30,9 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
         field.grids = turned_grids(mole, settings.grid_level)
         field._numint = GridIntegration()
     if settings.fitting_set is not None:
-        field = field.density_fit(with_df=Fitting(mole, settings.fitting_set))
+        elements = {mole.atom_pure_symbol(place) for place in range(mole.natm)}
+        shells = {element: auxiliary_basis(settings.fitting_set, element) for element in elements}
+        field = field.density_fit(with_df=Fitting(mole, shells))
     if solvent is not None:
         field = field.PCM()
         field.with_solvent.method = "IEF-PCM"

@@ -7,7 +7,7 @@ from dataclasses import asdict, dataclass
 from ..errors import ChoiceError
 from ..level import Level
 
-ENGINE_VERSION = 1
+ENGINE_VERSION = 2
 """Raised whenever the numbers of the engine change; a stored state of another version is never served."""
 
 
@@ -16,7 +16,7 @@ class Settings:
     """Numerical settings of one accuracy."""
 
     fitting_set: str | None
-    """Density-fitting basis; None computes exact integrals."""
+    """Name of the density-fitting basis, see `auxiliary`; None computes exact integrals."""
     grid_level: int
     """Exchange-correlation grid of the final energy and density."""
     energy_tolerance_Eh: float
@@ -29,8 +29,8 @@ class Settings:
 
 
 SETTINGS = {
-    "quick": Settings("def2-universal-jkfit", 0, 1e-7, 1e-4, None, "pcseg-0"),
-    "standard": Settings("def2-universal-jkfit", 1, 1e-9, 1e-5, 0, "pcseg-0"),
+    "quick": Settings("def2-universal-jkfit", 0, 1e-7, 3e-5, None, "pcseg-0"),
+    "standard": Settings("def2-universal-jkfit + free s, p", 1, 1e-9, 3e-6, 0, "pcseg-0"),
     "reference": Settings(None, 4, 1e-10, 1e-6),
 }
 
