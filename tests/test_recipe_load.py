@@ -189,8 +189,6 @@ def test_one_mistake_is_one_problem(tmp_path: Path) -> None:
         ("motion: {inversion: true}", "motion.inversion", "motion.inversion"),
         ("motion: {torsion: true}", "motion.torsion", "motion.torsion"),
         ("motion: {vibration: true}", "motion.vibration", "motion.vibration"),
-        ("relax: true", "relax", "relax"),
-        ("relax: {functional: PBE, basis: pcseg-0}", "relax", "relax"),
     ],
 )
 def test_features_that_are_not_built_are_refused_with_a_sentence(
@@ -204,6 +202,12 @@ def test_features_that_are_not_built_are_refused_with_a_sentence(
         )
     else:
         load_recipe(path)
+
+
+def test_relaxation_of_a_file_is_asked_for(tmp_path: Path) -> None:
+    assert load_recipe(_write(tmp_path, "relax: true")).relax == Level("UKS", "pcseg-1", functional="B3LYP")
+    chosen = load_recipe(_write(tmp_path, "relax: {functional: pbe, basis: pcseg-0}")).relax
+    assert chosen == Level("UKS", "pcseg-0", functional="PBE")
 
 
 def test_switched_off_features_are_not_refused(tmp_path: Path) -> None:

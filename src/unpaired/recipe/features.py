@@ -14,13 +14,11 @@ NOT_BUILT: dict[str, str] = {
 }
 """What each feature does, by the key that asks for it."""
 
-INSTEAD: dict[str, str] = {
-}
-
 
 def not_built(feature: str) -> str | None:
     """The sentence that refuses a feature, or None if the feature is there."""
     if feature not in NOT_BUILT:
         return None
-    instead = INSTEAD.get(feature, "leave the key out")
-    return f"is understood, but {NOT_BUILT[feature]} has not been built yet in this version; {instead}"
+    return (
+        f"is understood, but {NOT_BUILT[feature]} has not been built yet in this version; leave the key out"
+    )

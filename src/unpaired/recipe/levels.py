@@ -163,9 +163,6 @@ def read_relax(recipe: Section, elements: Sequence[str] | None, from_smiles: boo
     else:
         recipe.refuse("relax", f"is not a choice; allowed: {allowed}; found: {found(node)}", node.line)
         return False
-    if level and "relax" in recipe and (refusal := not_built("relax")):
-        recipe.refuse("relax", refusal)
-        return False
     return level
 
 

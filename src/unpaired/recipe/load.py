@@ -5,12 +5,11 @@ from __future__ import annotations
 from collections.abc import Iterable
 from pathlib import Path
 
-from ..errors import RecipeError, StructureError, nearest
-from ..molecule import ATOMIC_NUMBER, Molecule
-from ..structures.file import SUFFIXES, read_structure
+from ..errors import RecipeError
+from ..molecule import Molecule
 from ..structures.geometry import Geometry
-from ..structures.smiles import Drawing, read_smiles
-from .document import NodeMap, Problems, Scalar, found, read_document
+from .document import Problems, read_document
+from .electrons import read_charge, read_multiplicity
 from .experiment import read_g, read_measured, read_temperature
 from .features import not_built
 from .levels import read_levels, read_relax, read_solvent
@@ -18,6 +17,7 @@ from .names import ALLOWED_NAME, is_name
 from .nuclear import Atoms, read_groups, read_isotopes
 from .recipe import Motion, Recipe
 from .section import Section
+from .source import read_source
 
 KEYS = (
     "radical",
@@ -81,23 +81,18 @@ def _read(path: Path, problems: Problems) -> tuple[Recipe | None, str | None, in
         return None, None, 1
     recipe = Section(top, "", problems, KEYS)
     name = _name(recipe)
-    structure, smiles = _where(recipe)
-    geometry: Geometry | Drawing | None = None
-    if structure is not None:
-        geometry = _geometry(recipe, path.parent / structure)
-    elif smiles is not None:
-        geometry = _drawing(recipe, smiles)
-    elements = geometry.elements if geometry else None
-    charge = _charge(recipe, geometry)
-    multiplicity = _multiplicity(recipe, geometry, charge)
+    structure, smiles, source = read_source(recipe, path.parent)
+    elements = source.elements if source else None
+    charge = read_charge(recipe, source)
+    multiplicity = read_multiplicity(recipe, elements, charge)
     levels = read_levels(recipe, elements)
     solvent = read_solvent(recipe)
     isotopes: dict[str, str] = {}
     groups: tuple[tuple[str, ...], ...] = ()
     atoms = None
-    if geometry is not None:
-        atoms = Atoms(geometry.elements)
-        isotopes = read_isotopes(recipe, atoms, geometry.isotopes)
+    if source is not None:
+        atoms = Atoms(source.elements)
+        isotopes = read_isotopes(recipe, atoms, source.isotopes)
         groups = read_groups(recipe, atoms)
     relax = read_relax(recipe, elements, from_smiles=smiles is not None)
     motion = _motion(recipe)
@@ -108,8 +103,8 @@ def _read(path: Path, problems: Problems) -> tuple[Recipe | None, str | None, in
     if problems.found or name is None or charge is None or multiplicity is None:
         return None, name, line
     molecule = None
-    if isinstance(geometry, Geometry):
-        molecule = Molecule(geometry.elements, geometry.coordinates_bohr, charge, multiplicity)
+    if isinstance(source, Geometry):
+        molecule = Molecule(source.elements, source.coordinates_bohr, charge, multiplicity)
     return (
         Recipe(
             radical=name,
@@ -120,7 +115,7 @@ def _read(path: Path, problems: Problems) -> tuple[Recipe | None, str | None, in
             charge=charge,
             multiplicity=multiplicity,
             levels=levels,
-            structure_comment=geometry.comment if isinstance(geometry, Geometry) else "",
+            structure_comment=source.comment if isinstance(source, Geometry) else "",
             solvent=solvent,
             isotopes=isotopes,
             groups=groups,
@@ -144,110 +139,6 @@ def _name(recipe: Section) -> str | None:
         return name
     recipe.refuse("radical", f'is not a usable name; allowed: {ALLOWED_NAME}; found: "{name[:100]}"')
     return None
-
-
-def _where(recipe: Section) -> tuple[str | None, str | None]:
-    """The path of the structure as written, or the SMILES."""
-    allowed = f'a path ending in {", ".join(SUFFIXES)} (relative to the recipe), or {{smiles: "[CH3]"}}'
-    if not recipe.require("structure", allowed):
-        return None, None
-    node = recipe.get("structure", "a structure", allowed)
-    if isinstance(node, Scalar):
-        return recipe.text("structure", allowed), None
-    if not isinstance(node, NodeMap):
-        if node is not None:
-            recipe.refuse(
-                "structure", f"is not a structure; allowed: {allowed}; found: {found(node)}", node.line
-            )
-        return None, None
-    section = Section(node, "structure", recipe.problems, ("smiles",))
-    if not section.require("smiles", 'text such as "[CH3]"'):
-        return None, None
-    return None, section.text("smiles", 'text such as "[CH3]"')
-
-
-def _geometry(recipe: Section, path: Path) -> Geometry | None:
-    if path.suffix.lower() not in SUFFIXES:
-        recipe.refuse(
-            "structure", f'is not a structure file; allowed: {", ".join(SUFFIXES)}; found: "{path.name}"'
-        )
-        return None
-    if not _is_file(path):
-        beside = [p.name for p in path.parent.glob("*") if p.suffix.lower() in SUFFIXES]
-        recipe.refuse(
-            "structure",
-            f"there is no such file{nearest(path.name, beside)}; a path is relative to the recipe; "
-            f'looked for: "{path}"',
-        )
-        return None
-    try:
-        return read_structure(path)
-    except StructureError as error:
-        recipe.refuse("structure", error.message)
-        return None
-
-
-def _is_file(path: Path) -> bool:
-    try:
-        return path.is_file()
-    except OSError:  # a name that is too long for the system
-        return False
-
-
-def _drawing(recipe: Section, smiles: str) -> Drawing | None:
-    try:
-        return read_smiles(smiles)
-    except StructureError as error:
-        recipe.refuse("structure", error.message)
-        return None
-
-
-def _charge(recipe: Section, geometry: Geometry | Drawing | None) -> int | None:
-    stated = geometry.charge if geometry else None
-    if "charge" not in recipe:
-        return stated or 0
-    charge = recipe.integer("charge", "a whole number such as -1, 0 or 1")
-    if charge is not None and stated is not None and stated != charge:
-        recipe.refuse(
-            "charge",
-            f"the structure has the formal charge {stated:+d}; correct one of the two; found: {charge:+d}",
-        )
-        return None
-    return charge
-
-
-def _multiplicity(recipe: Section, geometry: Geometry | Drawing | None, charge: int | None) -> int | None:
-    """2S+1, checked against the number of electrons."""
-    rule = "2S+1, one more than the number of unpaired electrons"
-    asked = recipe.integer("multiplicity", f"a whole number from 2 upwards ({rule})")
-    if asked is not None and asked < 2:
-        what = "means no unpaired electron" if asked == 1 else "is not a multiplicity"
-        recipe.refuse(
-            "multiplicity", f"{what}; allowed: a whole number from 2 upwards ({rule}); found: {asked}"
-        )
-        return None
-    if "multiplicity" in recipe.refused or charge is None or geometry is None:
-        return asked
-    electrons = sum(ATOMIC_NUMBER[element] for element in geometry.elements) - charge
-    if electrons < 1:
-        recipe.refuse(
-            "charge", f"leaves no electron; allowed: less than {electrons + charge:+d}; found: {charge:+d}"
-        )
-        return None
-    lowest = 2 if electrons % 2 else 3
-    if asked is None:
-        asked = lowest
-    fitting = [str(value) for value in range(lowest, electrons + 2, 2)]
-    if str(asked) not in fitting:
-        parity = "odd" if electrons % 2 else "even"
-        options = ", ".join([*fitting[:3], "..."] if len(fitting) > 3 else fitting) or "none"
-        recipe.refuse(
-            "multiplicity",
-            f"does not fit {electrons} electrons at charge {charge:+d} (an {parity} number); "
-            f"allowed: {options} ({rule}); found: {asked}",
-        )
-        return None
-    return asked
 
 
 def _motion(recipe: Section) -> Motion:

@@ -34,7 +34,12 @@ def read_isotopes(recipe: Section, atoms: Atoms, in_file: Mapping[str, str]) -> 
 
     `in_file`: isotopes that the structure file names.
     """
-    isotopes = {label: name for label, name in in_file.items() if label in atoms.element}
+    isotopes: dict[str, str] = {}
+    for label, stated in in_file.items():
+        try:
+            isotopes[label] = nuclei.isotope(stated).name
+        except ChoiceError as error:
+            recipe.refuse("structure", f"{label}: {error.message}")
     node = recipe.get("isotopes", "a mapping", "a mapping such as {C1: 13C}")
     if isinstance(node, NodeMap):
         for label, entry in node.entries.items():
