@@ -8,13 +8,14 @@ and the isotropic couplings in mT as one line of JSON. Imports nothing of this p
 
 import json
 import sys
+from pathlib import Path
 
 import basis_set_exchange
 import numpy as np
 from pyscf import dft, gto, scf
 
 path, method, basis, *functional = sys.argv[1:]
-lines = open(path).read().splitlines()
+lines = Path(path).read_text().splitlines()
 atoms = "; ".join(lines[2 : 2 + int(lines[0])])
 elements = {atom.split()[0] for atom in atoms.split(";")}
 mol = gto.M(

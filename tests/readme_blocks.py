@@ -1,0 +1,50 @@
+"""Re-make the parts of README.md that commands print.
+
+    python tests/readme_blocks.py columns demo
+
+`columns` takes the registry; `demo` runs the README's demo recipes afresh and writes what they print. A test
+compares `columns`; the demo's times differ from run to run, so its numbers are compared without them.
+"""
+
+from __future__ import annotations
+
+import subprocess
+import sys
+import tempfile
+from pathlib import Path
+
+from unpaired import columns
+
+ROOT = Path(__file__).parent.parent
+README = ROOT / "README.md"
+
+
+def demo() -> str:
+    """What the demo prints, as a fenced block."""
+    recipes = sorted(str(path.relative_to(ROOT)) for path in (ROOT / "recipes" / "demo").glob("*.yaml"))
+    with tempfile.TemporaryDirectory() as place:
+        printed = subprocess.run(
+            [sys.executable, "-m", "unpaired", "run", *recipes, "--out", place],
+            cwd=ROOT,
+            check=True,
+            capture_output=True,
+            text=True,
+        ).stdout
+    return f"```\n{printed.replace(place, 'results').rstrip()}\n```\n"
+
+
+MAKERS = {"columns": columns.markdown, "demo": demo}
+
+
+def replace(text: str, name: str, content: str) -> str:
+    """README text with the named block replaced."""
+    begin, end = f"<!-- begin: {name} -->\n", f"<!-- end: {name} -->"
+    before, rest = text.split(begin)
+    return before + begin + content + end + rest.split(end)[1]
+
+
+if __name__ == "__main__":
+    whole = README.read_text(encoding="utf-8")
+    for block in sys.argv[1:]:
+        whole = replace(whole, block, MAKERS[block]())
+    README.write_text(whole, encoding="utf-8")
