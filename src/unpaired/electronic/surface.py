@@ -17,6 +17,8 @@ from ..files import write_atomically
 from ..level import Level
 from ..molecule import Molecule
 from ..point import Point, Solvent
+from .boundary import library_errors
+from .converge import converge
 from .meanfield import mean_field
 from .mole import build_mole
 from .settings import Settings, identity
@@ -77,7 +79,8 @@ class Surface:
         if known is not None:
             return known
         field = self.converged(coordinates)
-        gradient = np.asarray(field.nuc_grad_method().set(verbose=0).kernel())
+        with library_errors(f"{self.level.id}, gradient"):
+            gradient = np.asarray(field.nuc_grad_method().set(verbose=0).kernel())
         self.computed += 1
         self._remember(coordinates, float(field.e_tot), gradient)
         return float(field.e_tot), gradient
@@ -85,19 +88,12 @@ class Surface:
     def converged(self, coordinates_bohr: Floats) -> Any:
         """A converged PySCF mean-field object at these coordinates, started from the last density.
 
-        Raises ConvergenceError if neither DIIS nor the second-order method converges.
+        Raises ConvergenceError if no scheme of `converge` ends in a stationary state.
         """
         field = self.field(coordinates_bohr)
         guess = self._guess(coordinates_bohr, field.mol.nao)
-        field.kernel(dm0=guess)
-        if not field.converged and guess is not None:
-            field.kernel()
-        if not field.converged:
-            damped = self.field(coordinates_bohr)
-            damped.level_shift, damped.max_cycle = 0.3, 300
-            damped.kernel(dm0=field.make_rdm1())
-            field = self.field(coordinates_bohr)
-            field.kernel(dm0=damped.make_rdm1())
+        with library_errors(self.level.id):
+            converge(field, field.get_init_guess(key="minao") if guess is None else guess)
         if not field.converged:
             raise ConvergenceError(f"{self.level.id}: the self-consistent field did not converge on relaxing")
         self._last = np.array(coordinates_bohr), np.asarray(field.make_rdm1())
@@ -106,7 +102,9 @@ class Surface:
     def field(self, coordinates_bohr: Floats) -> Any:
         """An unconverged mean-field object at these coordinates."""
         point = Point(self.molecule.moved(coordinates_bohr), self.level, self.solvent)
-        return mean_field(build_mole(point), self.level, self.solvent, self.settings)
+        field = mean_field(build_mole(point), self.level, self.solvent, self.settings)
+        field.chkfile = None
+        return field
 
     # --- what is kept on disk ----------------------------------------
 
