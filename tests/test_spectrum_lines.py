@@ -133,10 +133,19 @@ def test_close_couplings_are_warned_of_in_second_order() -> None:
     )
 
 
-def test_a_group_without_coupling_keeps_its_labels() -> None:
-    lines = lines_of(system(("1H", 1, 2.0), ("13C", 1, 0.0)), "exact")
-    assert len(lines) == 4
-    assert len(spectrum(lines)) == 2
+@pytest.mark.parametrize("order", ["exact", "second", "first"])
+def test_a_group_without_coupling_multiplies_no_lines(order: str) -> None:
+    lines = lines_of(system(("1H", 1, 2.0), ("13C", 1, 0.0)), order)
+    assert len(lines) == 2
+    assert [row["m_I_C2"] for row in csv.DictReader(io.StringIO(lines_csv(lines)))] == ["", ""]
+    assert "C2 split nothing" in " ".join(lines.notes)
+
+
+def test_a_radical_without_couplings_has_one_line() -> None:
+    for order in ("exact", "second", "first"):
+        lines = lines_of(system(("1H", 2, 0.0)), order)
+        assert lines.position == pytest.approx([lines.sweep.centre], abs=1e-9)
+        assert lines.intensity.tolist() == [1.0]
 
 
 @pytest.mark.parametrize(

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import io
 from dataclasses import dataclass
+from textwrap import wrap
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -24,6 +25,7 @@ SIGNAL_NAMES = ("absorption", "first derivative", "second derivative")
 MOST_BRANCHES = 150
 """A level of the tree with more branches than this would be a black bar."""
 MOST_LEVELS = 8
+TITLE_LETTERS, SUBTITLE_LETTERS = 62, 105
 SEEN_SHARE_OF_WIDTH = 0.1
 """Groups that split by less than this share of the width are named, not drawn."""
 
@@ -48,9 +50,13 @@ class Caption:
             else f"{sweep.field_mT:g} mT"
         )
         return cls(
-            title=" + ".join(names),
-            subtitle=f"{fixed}, peak-to-peak width {width_mT:g} mT, {' and '.join(kinds)} couplings\n"
-            + "; ".join(sources),
+            title="\n".join(wrap(" + ".join(names), TITLE_LETTERS)),
+            subtitle="\n".join(
+                [
+                    f"{fixed}, peak-to-peak width {width_mT:g} mT, {' and '.join(kinds)} couplings",
+                    *(line for source in sources for line in wrap(source, SUBTITLE_LETTERS)),
+                ]
+            ),
             width_mT=width_mT,
         )
 
@@ -80,21 +86,18 @@ def spectrum_figure(
     _draw_sticks(below[0], lines, caption.width_mT * sweep.axis_per_mT, shift)
     if levels:
         _draw_tree(below[1], levels, sweep.centre + shift)
-        several = " (largest part of the mixture)" if len(lines.systems) > 1 else ""
-        if unseen:
-            below[1].text(
-                0.0, -0.02, f"too small to draw: {unseen}", transform=below[1].transAxes, fontsize=7, va="top"
-            )
         below[1].set_ylabel("splittings", fontsize=8)
-        if several:
-            below[1].set_title(f"tree of {system.name}{several}", fontsize=7, loc="left", pad=2)
+        remarks = [f"tree of {system.name} (largest part of the mixture)"] if len(lines.systems) > 1 else []
+        remarks += [f"not drawn: {unseen}"] if unseen else []
+        remark = "\n".join(line for text in remarks for line in wrap(text, SUBTITLE_LETTERS))
+        below[1].set_title(remark, fontsize=7, loc="left", pad=2)
     for panel in panels:
         panel.set_yticks([])
         panel.spines[["top", "right", "left"]].set_visible(False)
     for panel in panels[:-1]:
         panel.spines["bottom"].set_visible(False)
         panel.tick_params(bottom=False)
-    panels[-1].set_xlabel(AXIS_NAMES[curve.axis], labelpad=10 if unseen and levels else 4)
+    panels[-1].set_xlabel(AXIS_NAMES[curve.axis])
     panels[-1].ticklabel_format(axis="x", useOffset=False)
     ends = (curve.position[0] + shift, curve.position[-1] + shift)
     panels[-1].set_xlim(*ends)

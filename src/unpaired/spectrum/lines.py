@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
@@ -24,13 +25,14 @@ EXACT_STATES = 1024
 NEGLIGIBLE_SHARE_OF_WIDTH = 0.01
 """a*a/(2 B0) below this share of the width: second order cannot be told from the exact line."""
 NO_SPLITTING_MHz = 1e-6
-"""A weaker coupling moves no line by 1e-7 mT: its group is left out of the diagonalisation."""
+"""A weaker coupling moves no line by 1e-7 mT: its group does not multiply the lines."""
 EQUAL_MHz = 1e-6
 MOST_LABELLED = 300_000
 """Beyond this number of lines, those closer than a small share of the width are joined and lose their m_I."""
 JOIN_SHARE_OF_WIDTH = 0.002
 ABSENT = np.int16(-32768)
-"""2m of a group that the line's isotopologue does not have, or that was joined with an equal one."""
+"""2m of a group that the line's isotopologue does not have, that splits nothing, or that was joined with
+an equal one."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -172,7 +174,13 @@ def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: str) -> Li
     names = tuple(group.group for group in system.groups)
     taken, reason = _choice(everything, sweep, width_mT, order)
     notes = [reason]
-    together = [[k] for k in range(len(names))] if taken == "first" else _joined_equals(system, everything)
+    active = [k for k, one in enumerate(everything) if abs(one.coupling_MHz) >= NO_SPLITTING_MHz]
+    idle = [name for k, name in enumerate(names) if k not in active]
+    if idle:
+        notes.append(
+            f"{system.name}: {', '.join(idle)} split nothing (zero coupling); their m_I is left empty"
+        )
+    together = [[k] for k in active] if taken == "first" else _joined_equals(system, everything, active)
     for members in together:
         if len(members) > 1:
             notes.append(
@@ -212,7 +220,7 @@ def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: str) -> Li
 def _choice(splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, order: str) -> tuple[str, str]:
     """The order to take, and a sentence that says why."""
     size = second_order_size_mT(splittings, sweep)
-    states = int(np.prod([float(s.states) for s in splittings if abs(s.coupling_MHz) >= NO_SPLITTING_MHz]))
+    states = math.prod(s.states for s in splittings if abs(s.coupling_MHz) >= NO_SPLITTING_MHz)
     compared = f"a*a/(2 B0) = {size:.2g} mT, width {width_mT:g} mT"
     if order == "exact" and states > EXACT_STATES:
         raise InputError(
@@ -234,16 +242,17 @@ def _choice(splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, orde
 _WORDS = {"exact": "exact diagonalisation", "second": "second order", "first": "first order"}
 
 
-def _joined_equals(system: SpinSystem, splittings: Sequence[Splitting]) -> list[list[int]]:
+def _joined_equals(
+    system: SpinSystem, splittings: Sequence[Splitting], active: Sequence[int]
+) -> list[list[int]]:
     """Groups of one isotope with equal couplings flip together: places of those to be treated as one."""
     together: list[list[int]] = []
-    for k, splitting in enumerate(splittings):
+    for k in active:
         for members in together:
             first = members[0]
             if (
                 system.groups[first].isotope == system.groups[k].isotope
-                and abs(splittings[first].coupling_MHz - splitting.coupling_MHz) < EQUAL_MHz
-                and abs(splitting.coupling_MHz) >= NO_SPLITTING_MHz
+                and abs(splittings[first].coupling_MHz - splittings[k].coupling_MHz) < EQUAL_MHz
             ):
                 members.append(k)
                 break
@@ -256,19 +265,13 @@ def _positions(
     splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, order: str
 ) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.int16] | None]:
     """Positions, intensities and 2m per group; 2m is None if lines had to be joined."""
-    position = np.array([sweep.centre])
-    intensity = np.ones(1)
-    twice_m: NDArray[np.int16] | None = np.empty((1, len(splittings)), dtype=np.int16)
-    one_by_one = list(range(len(splittings)))
     if order == "exact":
-        inside = [k for k in one_by_one if abs(splittings[k].coupling_MHz) >= NO_SPLITTING_MHz]
-        position, intensity, labels = exact_lines([splittings[k] for k in inside], sweep)
-        twice_m = np.empty((len(position), len(splittings)), dtype=np.int16)
-        twice_m[:, inside] = labels
-        one_by_one = [k for k in one_by_one if k not in inside]
+        return exact_lines(splittings, sweep)
+    position, intensity = np.array([sweep.centre]), np.ones(1)
+    twice_m: NDArray[np.int16] | None = np.empty((1, len(splittings)), dtype=np.int16)
     displaced = second_order if order == "second" else first_order
-    for k in one_by_one:
-        offsets, shares, quanta = displaced(splittings[k], sweep)
+    for k, splitting in enumerate(splittings):
+        offsets, shares, quanta = displaced(splitting, sweep)
         position = np.add.outer(position, offsets).ravel()
         intensity = np.multiply.outer(intensity, shares).ravel()
         if twice_m is not None and len(position) <= MOST_LABELLED:
