@@ -21,7 +21,9 @@ recipe
 electronic
 properties
 motion
-diagnostics settle ensemble
+diagnostics ensemble
+proof
+settle
 result
 origin analysis
 store

@@ -11,33 +11,24 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .constants import BOHR_ANGSTROM, HARTREE_KJ_MOL
-from .electronic.cost import basis_functions
-from .electronic.hessian import analytic_hessian, difference_hessian, hessian_product
 from .electronic.relax import LOOSE, TIGHT, Relaxed, relax
-from .electronic.settings import Settings
 from .electronic.surface import Report, Surface
 from .errors import CalculationError, ConvergenceError
-from .flag import Flag
 from .level import Level
 from .molecule import Molecule
-from .point import Point, Solvent
+from .point import Solvent
+from .proof import ROUGH, ROUGH_BASIS, conformer_of, curvature_flags, curvature_of, jahn_teller
+from .recipe.levels import DEFAULT_RELAX
 from .recipe.recipe import Recipe
 from .settled import WINDOW_KJ_MOL, Conformer, Settled, relative_kJ_mol, weigh
 from .structures.conformers import SAME_Eh, alike_atoms, same_shape, starts
-from .structures.modes import FLAT_CM, lowest_mode, masses_u, normal_modes
 from .structures.smiles import Drawing, read_smiles
-from .structures.symmetry import operations, symmetrised
+from .structures.symmetry import symmetrised
 
 Floats = NDArray[np.float64]
 
-ROUGH_BASIS = "pcseg-0"
-ROUGH = Settings("def2-universal-jkfit", 0, 1e-7, 1e-4)
 ROUGH_WINDOW_KJ_MOL = 25.0
 """What the rough relaxation puts higher above the lowest is not relaxed further."""
-FULL_HESSIAN_FUNCTIONS = 75
-"""Up to this many basis functions the full analytic Hessian is the cheapest proof."""
-MODEL_HESSIAN_FUNCTIONS = 110
-"""Up to this many functions in ROUGH_BASIS its analytic Hessian is worth its time as a model."""
 ROUNDS = 4
 """How often a negative mode is followed."""
 DOWNHILL_ANGSTROM = (0.15, 0.3)
@@ -112,8 +103,6 @@ def prove(recipe: Recipe, report: Report | None = None, folder: Path | None = No
 
 
 def _work(recipe: Recipe, molecule: Molecule, report: Report | None, folder: Path | None) -> _Work:
-    from .recipe.levels import DEFAULT_RELAX
-
     level = recipe.relax or DEFAULT_RELAX
     return _Work(recipe, level, Surface(molecule, level, recipe.solvent, folder), report)
 
@@ -278,55 +267,22 @@ def _as_symmetric_as_it_is(work: _Work, end: Relaxed) -> Relaxed:
 def _proven(work: _Work, end: Relaxed) -> tuple[Conformer, Floats | None]:
     """The structure with its lowest mode, and the mode's displacement (atoms, 3)."""
     started = time.perf_counter()
-    coordinates = end.coordinates_bohr
-    molecule = work.surface.molecule.moved(coordinates)
-    order = len(operations(work.elements, molecule.coordinates_angstrom))
-    if len(work.elements) == 1:
-        return Conformer(molecule, end.energy_Eh, True, None, 0.0, order), None
-    masses = masses_u(work.elements)
-    functions = basis_functions(Point(molecule, work.level))
-    zero_point: float | None = None
     if work.report is not None:
         work.report("curvature", 0, end.energy_Eh, end.gradient_max)
-    if functions <= FULL_HESSIAN_FUNCTIONS or len(work.elements) <= 3:
-        hessian = analytic_hessian(work.surface, coordinates)
-        if hessian is None:
-            hessian = difference_hessian(work.surface, coordinates)
-        modes = normal_modes(hessian, coordinates, masses)
-        wavenumber, displacement = float(modes.wavenumbers_cm[0]), modes.displacements[0]
-        zero_point = modes.zero_point_Eh
-        how = "full Hessian"
-    else:
-        model, name = _model_hessian(work, molecule)
-        found = lowest_mode(hessian_product(work.surface, coordinates), model, coordinates, masses)
-        wavenumber, displacement = found.wavenumber_cm, found.displacement
-        how = (
-            f"iterated on {2 * found.products} gradients from {name}, residual {found.residual_cm:.0f} cm^-1"
-        )
+    found = curvature_of(work.surface, end.coordinates_bohr)
     work.timed("curvature", started)
-    minimum = None if abs(wavenumber) < FLAT_CM else wavenumber > 0
-    work.story.append(f"lowest mode {wavenumber:.0f} cm^-1 ({how})")
-    return Conformer(molecule, end.energy_Eh, minimum, wavenumber, zero_point, order), displacement
-
-
-def _model_hessian(work: _Work, molecule: Molecule) -> tuple[Floats, str]:
-    """A cheap Hessian that knows which directions are soft."""
-    level = replace(work.level, basis=ROUGH_BASIS, name=None)
-    surface = Surface(molecule, level, work.surface.solvent, None, ROUGH)
-    if basis_functions(Point(molecule, level)) <= MODEL_HESSIAN_FUNCTIONS:
-        hessian = analytic_hessian(surface, molecule.coordinates_bohr)
-        if hessian is not None:
-            return hessian, f"the Hessian in {ROUGH_BASIS}"
-    return 0.5 * np.eye(3 * len(molecule.elements)), "nothing"
+    work.story.append(found.story)
+    return conformer_of(work.surface, end.coordinates_bohr, end.energy_Eh, found), found.displacement
 
 
 def _settled(work: _Work, kept: list[Conformer], note: str, drawing: Drawing | None) -> Settled:
     weights, with_zero_point = weigh(kept, work.recipe.temperature_K)
     lowest = kept[0]
-    flags = list(_flags(lowest))
-    jahn_teller = _jahn_teller(work, lowest)
-    if jahn_teller is not None:
-        flags.append(jahn_teller)
+    flags = curvature_flags(lowest)
+    distorted = jahn_teller(work.surface, lowest)
+    if distorted is not None:
+        flags.append(distorted[0])
+        work.story.append(distorted[1])
     return Settled(
         molecule=lowest.molecule,
         note=note,
@@ -340,76 +296,3 @@ def _settled(work: _Work, kept: list[Conformer], note: str, drawing: Drawing | N
         seconds=tuple(work.seconds.items()),
         alike=alike_atoms(drawing, lowest.molecule) if drawing is not None else (),
     )
-
-
-def _flags(lowest: Conformer) -> list[Flag]:
-    if lowest.minimum is False:
-        return [
-            Flag(
-                "saddle",
-                "bad",
-                "the structure is no minimum: couplings belong to a place where the radical is not; start "
-                "from another structure",
-                lowest.lowest_mode_cm,
-                0.0,
-            )
-        ]
-    if lowest.minimum is None:
-        return [
-            Flag(
-                "flat-mode",
-                "note",
-                "the softest motion is so flat that the curvature proves nothing; couplings that depend on it "
-                "need an average over it",
-                lowest.lowest_mode_cm,
-                FLAT_CM,
-            )
-        ]
-    return []
-
-
-JAHN_TELLER_MAX_ANGSTROM = 0.12
-JAHN_TELLER_GRADIENT = 2e-3
-"""Eh/bohr towards the minimum at the more symmetric structure. By symmetry it is zero unless the state is degenerate
-there; then the slope is linear (H. A. Jahn, E. Teller, Proc. R. Soc. A 161, 220 (1937))."""
-
-
-def _jahn_teller(work: _Work, lowest: Conformer) -> Flag | None:
-    """The flag of a minimum that is one of several around a degenerate, more symmetric structure."""
-    angstrom = lowest.molecule.coordinates_angstrom
-    wider = operations(work.elements, angstrom, JAHN_TELLER_MAX_ANGSTROM / 2, JAHN_TELLER_MAX_ANGSTROM)
-    threefold = any((_repeated(p) > 2) for p, _ in wider)
-    if len(wider) <= lowest.order or not threefold:
-        return None
-    centre = symmetrised(work.elements, angstrom, JAHN_TELLER_MAX_ANGSTROM / 2, JAHN_TELLER_MAX_ANGSTROM)
-    way = (angstrom - centre) / BOHR_ANGSTROM
-    try:
-        energy, gradient = work.surface(centre / BOHR_ANGSTROM)
-    except ConvergenceError:
-        return None
-    slope = float((gradient * way).sum() / np.linalg.norm(way))
-    if abs(slope) < JAHN_TELLER_GRADIENT:
-        return None
-    copies = len(wider) // lowest.order
-    depth = (energy - lowest.energy_Eh) * HARTREE_KJ_MOL
-    work.story.append(
-        f"the structure with {len(wider)} symmetry operations lies {depth:.1f} kJ/mol higher and slopes down "
-        "linearly: a Jahn-Teller distortion"
-    )
-    return Flag(
-        "jahn-teller",
-        "caution",
-        f"one of {copies} equal minima that interconvert (about {depth:.1f} kJ/mol below the symmetric structure): "
-        "a spectrum shows the mean; name the nuclei that become equal under groups:",
-        depth,
-        0.0,
-    )
-
-
-def _repeated(permutation: NDArray[np.intp]) -> int:
-    """How often a permutation must be repeated until every atom is back."""
-    start = np.arange(len(permutation))
-    image, times = permutation.copy(), 1
-    while (image != start).any():
-        image, times = permutation[image], times + 1
-    return times

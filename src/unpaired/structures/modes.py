@@ -100,7 +100,7 @@ def lowest_mode(
 
     E. R. Davidson, J. Comput. Phys. 17, 87 (1975), preconditioned by `model_hessian` (3 atoms, 3 atoms), such as the
     Hessian of a smaller basis set; `product` takes and gives a Cartesian (3 atoms,) array in Eh/bohr^2. Starts from the
-    model's two lowest modes.
+    model's lowest mode and from a mixture of all modes.
     """
     root = np.repeat(np.sqrt(masses), 3)
     space = vibrational_space(coordinates_bohr, masses)
@@ -108,7 +108,7 @@ def lowest_mode(
     model_values, model_vectors = np.linalg.eigh(model)
     basis: list[Floats] = []
     images: list[Floats] = []
-    fresh = [np.asarray(model_vectors[:, i]) for i in range(min(2, len(model_values)))]
+    fresh = _first_directions(model_values, model_vectors)
     value, vector, residual = 0.0, fresh[0], np.inf
     while fresh and len(basis) < most:
         for direction in fresh:
@@ -135,3 +135,16 @@ def lowest_mode(
     return LowestMode(
         wavenumber_cm(value), cartesian / np.linalg.norm(cartesian), wavenumber_cm(residual), len(basis)
     )
+
+
+def _first_directions(values: Floats, vectors: Floats) -> list[Floats]:
+    """The model's lowest mode, and a mixture of all others, softer ones more.
+
+    The mixture keeps an iteration in a symmetric structure from never seeing the modes of another symmetry.
+    """
+    first = np.asarray(vectors[:, 0])
+    if len(values) == 1:
+        return [first]
+    soft = np.maximum(values[1:] - values[0], 0.01 * max(float(values[-1]), 1e-12))
+    mixture = vectors[:, 1:] @ (np.cos(1.0 + np.arange(1, len(values)) ** 1.5) / soft)
+    return [first, np.asarray(mixture / np.linalg.norm(mixture))]

@@ -1,0 +1,171 @@
+"""What is proven of a relaxed structure: its curvature, its electronic state, and a Jahn-Teller distortion."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .constants import BOHR_ANGSTROM, HARTREE_KJ_MOL
+from .electronic.cost import basis_functions
+from .electronic.hessian import analytic_hessian, difference_hessian, hessian_product
+from .electronic.settings import Settings
+from .electronic.surface import Surface
+from .errors import ConvergenceError
+from .flag import Flag
+from .point import Point
+from .settled import Conformer
+from .structures.modes import FLAT_CM, lowest_mode, masses_u, normal_modes
+from .structures.symmetry import operations, symmetrised
+
+Floats = NDArray[np.float64]
+
+ROUGH_BASIS = "pcseg-0"
+ROUGH = Settings("def2-universal-jkfit", 0, 1e-7, 1e-4)
+"""Basis set and settings of what only has to be roughly right: first relaxations, model Hessians."""
+FULL_HESSIAN_FUNCTIONS = 75
+"""Up to this many basis functions the full analytic Hessian is the cheapest proof."""
+MODEL_HESSIAN_FUNCTIONS = 110
+"""Up to this many functions in ROUGH_BASIS its analytic Hessian is worth its time as a model."""
+CONVERGED_CM = 100.0
+"""An iterated lowest mode counts if its residual is below this."""
+JAHN_TELLER_MAX_ANGSTROM = 0.12
+JAHN_TELLER_GRADIENT = 2e-3
+"""Eh/bohr towards the minimum at the more symmetric structure. By symmetry it is zero unless the state is
+degenerate there; then the slope is linear (H. A. Jahn, E. Teller, Proc. R. Soc. A 161, 220 (1937))."""
+
+
+@dataclass(frozen=True, eq=False)
+class Curvature:
+    """The lowest vibration of a stationary structure."""
+
+    minimum: bool | None
+    wavenumber_cm: float | None
+    """None for an atom; negative stands for imaginary."""
+    displacement: Floats | None
+    """Shape (atoms, 3), Cartesian, length 1."""
+    zero_point_Eh: float | None
+    story: str
+
+
+def curvature_of(surface: Surface, coordinates_bohr: Floats) -> Curvature:
+    """The lowest mode of a structure (atoms, 3): from the full Hessian for small molecules, else by iteration.
+
+    The iteration multiplies the Hessian by directions (gradient differences) and is led by the Hessian of a
+    smaller basis set.
+    """
+    elements = surface.molecule.elements
+    if len(elements) == 1:
+        return Curvature(True, None, None, 0.0, "an atom has no vibrations")
+    masses = masses_u(elements)
+    molecule = surface.molecule.moved(coordinates_bohr)
+    functions = basis_functions(Point(molecule, surface.level))
+    if functions <= FULL_HESSIAN_FUNCTIONS or len(elements) <= 3:
+        hessian = analytic_hessian(surface, coordinates_bohr)
+        how = "full Hessian"
+        if hessian is None:
+            hessian, how = difference_hessian(surface, coordinates_bohr), "Hessian by gradient differences"
+        modes = normal_modes(hessian, coordinates_bohr, masses)
+        wavenumber = float(modes.wavenumbers_cm[0])
+        return Curvature(
+            None if abs(wavenumber) < FLAT_CM else wavenumber > 0,
+            wavenumber,
+            modes.displacements[0],
+            modes.zero_point_Eh,
+            f"lowest mode {wavenumber:.0f} cm^-1 ({how})",
+        )
+    model, name = _model_hessian(surface, coordinates_bohr)
+    found = lowest_mode(hessian_product(surface, coordinates_bohr), model, coordinates_bohr, masses)
+    clear = found.residual_cm <= CONVERGED_CM and abs(found.wavenumber_cm) >= FLAT_CM
+    # A negative curvature along any direction proves a saddle, converged or not.
+    minimum = False if found.wavenumber_cm <= -FLAT_CM else (True if clear else None)
+    return Curvature(
+        minimum,
+        found.wavenumber_cm,
+        found.displacement,
+        None,
+        f"lowest mode {found.wavenumber_cm:.0f} cm^-1 (iterated on {2 * found.products} gradients, led by "
+        f"{name}; residual {found.residual_cm:.0f} cm^-1)",
+    )
+
+
+def _model_hessian(surface: Surface, coordinates_bohr: Floats) -> tuple[Floats, str]:
+    """A cheap Hessian that knows which directions are soft, and its name."""
+    molecule = surface.molecule.moved(coordinates_bohr)
+    level = replace(surface.level, basis=ROUGH_BASIS, name=None)
+    if basis_functions(Point(molecule, level)) <= MODEL_HESSIAN_FUNCTIONS:
+        rough = Surface(molecule, level, surface.solvent, None, ROUGH)
+        hessian = analytic_hessian(rough, coordinates_bohr)
+        if hessian is not None:
+            return hessian, f"the Hessian in {ROUGH_BASIS}"
+    return 0.5 * np.eye(coordinates_bohr.size), "no model"
+
+
+def conformer_of(surface: Surface, coordinates_bohr: Floats, energy_Eh: float, found: Curvature) -> Conformer:
+    """The record of a stationary structure."""
+    molecule = surface.molecule.moved(coordinates_bohr)
+    return Conformer(
+        molecule,
+        energy_Eh,
+        found.minimum,
+        found.wavenumber_cm,
+        found.zero_point_Eh,
+        len(operations(molecule.elements, molecule.coordinates_angstrom)),
+    )
+
+
+def curvature_flags(lowest: Conformer) -> list[Flag]:
+    """A flag for a structure that is no minimum, or that might be none."""
+    if lowest.minimum is False:
+        advice = (
+            "the structure is no minimum: couplings belong to a place where the radical is not; "
+            "relax it (relax: true) or start from another structure"
+        )
+        return [Flag("saddle", "bad", advice, lowest.lowest_mode_cm, 0.0)]
+    if lowest.minimum is None:
+        advice = (
+            "the softest motion is so flat that the curvature proves nothing; couplings that depend on it "
+            "need an average over it"
+        )
+        return [Flag("flat-mode", "note", advice, lowest.lowest_mode_cm, FLAT_CM)]
+    return []
+
+
+def jahn_teller(surface: Surface, lowest: Conformer) -> tuple[Flag, str] | None:
+    """Flag and sentence for a minimum that is one of several around a degenerate, more symmetric structure."""
+    elements, angstrom = lowest.molecule.elements, lowest.molecule.coordinates_angstrom
+    wide = (JAHN_TELLER_MAX_ANGSTROM / 2, JAHN_TELLER_MAX_ANGSTROM)
+    wider = operations(elements, angstrom, *wide)
+    threefold = any(_order(permutation) > 2 for permutation, _ in wider)
+    if len(wider) <= lowest.order or not threefold:
+        return None
+    centre = symmetrised(elements, angstrom, *wide)
+    way = (angstrom - centre) / BOHR_ANGSTROM
+    try:
+        energy, gradient = surface(centre / BOHR_ANGSTROM)
+    except ConvergenceError:
+        return None
+    slope = float((gradient * way).sum() / np.linalg.norm(way))
+    if abs(slope) < JAHN_TELLER_GRADIENT:
+        return None
+    copies = len(wider) // lowest.order
+    depth = (energy - lowest.energy_Eh) * HARTREE_KJ_MOL
+    advice = (
+        f"one of {copies} equal minima that interconvert, {depth:.1f} kJ/mol below the symmetric structure: a "
+        "spectrum shows the mean; name the nuclei that become equal under groups:"
+    )
+    sentence = (
+        f"the structure with {len(wider)} symmetry operations lies {depth:.1f} kJ/mol higher and slopes down "
+        "linearly: a Jahn-Teller distortion"
+    )
+    return Flag("jahn-teller", "caution", advice, depth, 0.0), sentence
+
+
+def _order(permutation: NDArray[np.intp]) -> int:
+    """How often a permutation must be repeated until every atom is back."""
+    start = np.arange(len(permutation))
+    image, times = permutation.copy(), 1
+    while (image != start).any():
+        image, times = permutation[image], times + 1
+    return times
