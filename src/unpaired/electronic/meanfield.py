@@ -21,6 +21,7 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
     from .auxiliary import auxiliary_basis
     from .fitting import Fitting
     from .grid import GridIntegration
+    from .staged import staged
 
     # the classes themselves: scf.UHF(mole) of one electron is a shortcut that ignores a continuum
     kinds = {"UHF": scf.uhf.UHF, "ROHF": scf.rohf.ROHF, "UKS": dft.uks.UKS, "ROKS": dft.roks.ROKS}
@@ -37,6 +38,8 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
         field = field.PCM()
         field.with_solvent.method = "IEF-PCM"
         field.with_solvent.eps = solvent.dielectric
+    if level.is_kohn_sham and settings.start_grid_level is not None:
+        field = staged(field, settings.start_grid_level)
     field.conv_tol = settings.energy_tolerance_Eh
     field.conv_tol_grad = settings.gradient_tolerance
     field.max_cycle = settings.max_iterations

@@ -46,7 +46,7 @@ def _solve(point: Point, report: Report | None) -> State:
             report("scf", iterations, float(local["e_tot"]))
 
     field.callback = watch
-    used = converge(field, initial_density(point, mole, setting, watch))
+    used = converge(field, initial_density(point, mole, setting))
     if not field.converged:
         raise ConvergenceError(
             f"not converged after {iterations} iterations of {', then '.join(used)}; "

@@ -1,8 +1,7 @@
-"""A starting density near the answer, from where iterations are cheap: a small basis, then a coarse grid."""
+"""A starting density near the answer, converged in a small basis and projected."""
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import replace
 from typing import Any
 
@@ -16,30 +15,21 @@ from .meanfield import mean_field
 from .mole import build_mole
 from .settings import Settings
 
-Watch = Callable[[dict[str, Any]], None]
-
 ROUGH_ENERGY_Eh = 1e-5
 ROUGH_GRADIENT = 1e-3
-"""Thresholds of the start: below the change that the next, better stage makes."""
 ROUGH_CYCLES = 40
+"""Thresholds in the small basis: below the change that the larger one makes."""
 WORTH_IT = 2.0
 """A small-basis start is made where the basis has this many times more functions than the small one."""
 
 
-def initial_density(
-    point: Point, mole: Any, settings: Settings, watch: Watch | None = None
-) -> NDArray[np.float64]:
+def initial_density(point: Point, mole: Any, settings: Settings) -> NDArray[np.float64]:
     """Alpha and beta density matrices to start a field of this point from, shape (2, functions, functions).
 
-    A stage that does not converge hands on nothing, and the stage after it starts as if it had not been.
+    From the level's own method in `start_basis`; a superposition of atoms where that basis lacks an element, saves
+    nothing or does not converge.
     """
     density = _from_small_basis(point, mole, settings)
-    if point.level.is_kohn_sham and settings.start_grid_level is not None:
-        rough = _rough_field(point, mole, settings)
-        rough.callback = watch
-        rough.kernel(dm0=density)
-        if rough.converged:
-            density = np.asarray(rough.make_rdm1())
     if density is None:
         density = np.asarray(mean_field(mole, point.level, None, settings).get_init_guess())
     return density
@@ -57,23 +47,18 @@ def _from_small_basis(point: Point, mole: Any, settings: Settings) -> NDArray[np
     small = build_mole(small_point)
     if WORTH_IT * small.nao > mole.nao:
         return None
-    rough = _rough_field(small_point, small, settings)
-    rough.kernel()
-    if not rough.converged:
-        return None
-    return project(small, mole, np.asarray(rough.make_rdm1()), mole.nelec)
-
-
-def _rough_field(point: Point, mole: Any, settings: Settings) -> Any:
     grid = settings.grid_level if settings.start_grid_level is None else settings.start_grid_level
     rough = replace(
         settings,
         grid_level=grid,
+        start_grid_level=None,
         energy_tolerance_Eh=ROUGH_ENERGY_Eh,
         gradient_tolerance=ROUGH_GRADIENT,
         max_iterations=ROUGH_CYCLES,
     )
-    return mean_field(mole, point.level, point.solvent, rough)
+    field = mean_field(small, point.level, point.solvent, rough)
+    field.kernel()
+    return project(small, mole, np.asarray(field.make_rdm1()), mole.nelec) if field.converged else None
 
 
 def project(
