@@ -160,3 +160,11 @@ def test_a_missing_file_is_named() -> None:
 def test_nothing_wrong_is_written() -> None:
     with pytest.raises(RecordError, match=r"to be written: groups\[0\].count"):
         systems_text([replace(ONE, groups=(replace(ONE.groups[0], count=5),))])
+
+
+def test_files_of_every_released_version_are_read_for_ever() -> None:
+    pinned = Path(__file__).parent / "pinned" / "spin-system-1.json"
+    (found,) = read_systems(pinned)
+    assert (found.radical, found.isotopologue, found.peak_to_peak_width_mT) == ("h2no", "15N(N1)", 0.1)
+    assert [group.a_iso_MHz for group in found.groups] == [-22.46885280127841, -41.52556321593258]
+    assert systems_text([found]) == pinned.read_text(encoding="utf-8")

@@ -15,23 +15,16 @@ from typing import Any
 from ..constants import CODATA_EDITION, ELECTRON_G, MHZ_PER_MT
 from ..errors import ChoiceError, InputError, require_choice
 from ..flag import SEVERITIES
-from ..nuclei import Isotope, isotope, natural_composition
+from ..nuclei import Isotope, isotope
 from ..result import Result, Row
 from ..spinsystem import SpinGroup, SpinNucleus, SpinSystem, Tensor
+from .natural import Filling, combinations, fillings, is_usual
 
 COUPLING_KINDS = ("averaged", "equilibrium")
 
-MIXTURE_BELOW = 0.9
-"""An element whose most abundant isotope (spinless ones together) falls below this share is a mixture by
-default: B, Cl, Br among the common ones."""
-SMALLEST_SHARE = 1e-4
-"""Isotopologues of default mixtures below this share are left out."""
 MOST_NAMED = 6
 AVERAGED_COLUMN = "a_averaged_mT"
 TENSOR_COLUMNS = tuple(tuple(f"t_{min(a, b)}{max(a, b)}_MHz" for b in "xyz") for a in "xyz")
-
-Choice = tuple[tuple[Isotope | None, int], ...]
-"""How many of a site's atoms are of which isotope."""
 
 
 @dataclass(frozen=True)
@@ -81,12 +74,9 @@ def spin_systems(result: Result, question: Question) -> tuple[SpinSystem, ...]:
     g_iso, g_source = g_of(result, question.g_iso)
     sites = sites_of(result, level, question.coupling)
     fixed = _fixed_isotopes(result, question.labels or {})
-    chosen = [
-        (share, choices)
-        for share, choices in _combinations(
-            [_choices(site, fixed, question.least_share) for site in sites],
-            question.least_share or SMALLEST_SHARE,
-        )
+    free = [sum(atom not in fixed for atom in site.atoms) if site.table_isotope else 0 for site in sites]
+    choices = [
+        fillings(site.element, count, question.least_share) for site, count in zip(sites, free, strict=True)
     ]
     kind = "averaged" if any(site.averaged for site in sites) else "equilibrium"
     return tuple(
@@ -99,15 +89,15 @@ def spin_systems(result: Result, question: Question) -> tuple[SpinSystem, ...]:
             coupling_kind=kind,
             groups=tuple(
                 group
-                for site, choice in zip(sites, choices, strict=True)
-                for group in _groups(result, level, site, choice, fixed)
+                for site, filling in zip(sites, filled, strict=True)
+                for group in _groups(result, level, site, filling, fixed)
             ),
-            isotopologue=_name(sites, choices, fixed),
+            isotopologue=_name(sites, filled, fixed),
             share=share,
             peak_to_peak_width_mT=question.width_mT,
             provenance=_provenance(result, level, sites, kind),
         )
-        for share, choices in chosen
+        for share, filled in combinations(choices, question.least_share)
     )
 
 
@@ -173,56 +163,13 @@ def _fixed_isotopes(result: Result, labels: Mapping[str, str]) -> dict[str, Isot
     return fixed
 
 
-def _choices(
-    site: Site, fixed: Mapping[str, Isotope], least_share: float | None
-) -> list[tuple[float, Choice]]:
-    """What the atoms of a site that nobody fixed may be, with shares, most abundant first."""
-    free = sum(atom not in fixed for atom in site.atoms)
-    if not free or site.table_isotope is None:
-        return [(1.0, ())]
-    composition = natural_composition(site.element)
-    if least_share is None and composition[0][1] >= MIXTURE_BELOW:
-        return [(1.0, ((composition[0][0], free),))]
-    limit = least_share or SMALLEST_SHARE
-    found = [(share, choice) for share, choice in _multinomial(composition, free) if share >= limit]
-    if not found:
-        found = [max(_multinomial(composition, free), key=lambda pair: pair[0])]
-    return sorted(found, key=lambda pair: -pair[0])
-
-
-def _multinomial(
-    composition: Sequence[tuple[Isotope | None, float]], count: int
-) -> Iterator[tuple[float, Choice]]:
-    """Every way to fill `count` equivalent places, with its probability."""
-    (kind, share), *others = composition
-    if not others:
-        yield share**count, ((kind, count),) if count else ()
-        return
-    for number in range(count + 1):
-        here = math.comb(count, number) * share**number
-        for rest_share, rest in _multinomial(others, count - number):
-            yield here * rest_share, (((kind, number), *rest) if number else rest)
-
-
-def _combinations(
-    choices: Sequence[Sequence[tuple[float, Choice]]], limit: float
-) -> list[tuple[float, tuple[Choice, ...]]]:
-    """One choice per site; a product only falls, so whatever is below the limit on the way is dropped."""
-    found: list[tuple[float, tuple[Choice, ...]]] = [(1.0, ())]
-    for options in choices:
-        wider = [(share * more, (*before, choice)) for share, before in found for more, choice in options]
-        wider.sort(key=lambda pair: -pair[0])
-        found = [pair for pair in wider if pair[0] >= limit] or wider[:1]
-    return found
-
-
 def _isotope_atoms(
-    site: Site, choice: Choice, fixed: Mapping[str, Isotope]
+    site: Site, filling: Filling, fixed: Mapping[str, Isotope]
 ) -> list[tuple[Isotope | None, list[str]]]:
     """The atoms of a site by isotope, by first atom; nuclei with a spin go first where nothing fixes a place."""
     free = [atom for atom in site.atoms if atom not in fixed]
     kinds: dict[str, Isotope | None] = dict(fixed)
-    for kind, number in sorted(choice, key=lambda pair: pair[0] is None):
+    for kind, number in sorted(filling, key=lambda pair: pair[0] is None):
         here, free = free[:number], free[number:]
         kinds |= dict.fromkeys(here, kind)
     found: dict[Isotope | None, list[str]] = {}
@@ -232,9 +179,9 @@ def _isotope_atoms(
 
 
 def _groups(
-    result: Result, level: str, site: Site, choice: Choice, fixed: Mapping[str, Isotope]
+    result: Result, level: str, site: Site, filling: Filling, fixed: Mapping[str, Isotope]
 ) -> Iterator[SpinGroup]:
-    for kind, atoms in _isotope_atoms(site, choice, fixed):
+    for kind, atoms in _isotope_atoms(site, filling, fixed):
         if kind is None:
             continue
         if site.coupling_mT is None or site.table_isotope is None:
@@ -275,14 +222,12 @@ def _no_numbers(result: Result, level: str) -> str:
     return f"level {level} of {result.radical} has no couplings{because}{instead}"
 
 
-def _name(sites: Sequence[Site], choices: Sequence[Choice], fixed: Mapping[str, Isotope]) -> str:
+def _name(sites: Sequence[Site], filled: Sequence[Filling], fixed: Mapping[str, Isotope]) -> str:
     """Isotopes that are fixed, rare, or part of a mixture, each with its atoms; `main` if there are none."""
     parts = []
-    for site, choice in zip(sites, choices, strict=True):
-        for kind, atoms in _isotope_atoms(site, choice, fixed):
-            composition = natural_composition(site.element) if site.table_isotope else ()
-            usual = bool(composition) and composition[0][0] == kind and composition[0][1] >= MIXTURE_BELOW
-            if kind is not None and not usual:
+    for site, filling in zip(sites, filled, strict=True):
+        for kind, atoms in _isotope_atoms(site, filling, fixed):
+            if kind is not None and not is_usual(kind, site.element):
                 parts.append(f"{kind.name}({'+'.join(atoms)})")
     return " ".join(parts) or "main"
 
