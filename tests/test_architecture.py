@@ -31,7 +31,7 @@ execute
 study
 report tables
 spinsystem
-spectrum
+spectrum contrast
 figures
 """
 """From the bottom up. A package counts as one line; a module that is not here belongs above all of these."""
