@@ -10,6 +10,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from unpaired.constants import BOHR_ANGSTROM
 from unpaired.electronic.hessian import analytic_hessian, difference_hessian, hessian_product
 from unpaired.electronic.relax import relax
 from unpaired.electronic.surface import Surface
@@ -175,3 +176,13 @@ def test_radicals_that_are_embedded_straight_end_bent(tmp_path: Path, smiles: st
         masses_u(molecule.elements),
     )
     assert modes.wavenumbers_cm[0] > 300
+
+
+def test_an_unstable_electronic_state_is_left_before_the_relaxation_begins() -> None:
+    """N2+ at 1.116 A in UHF: the guess leads to a state above the lowest one (physics notes, section 10)."""
+    positions = np.array([[0, 0, 0], [0, 0, 1.116 / BOHR_ANGSTROM]])
+    surface = Surface(Molecule(("N", "N"), positions, 1, 2), Level("UHF", "pcseg-0"))
+    before = surface.converged(positions).e_tot
+    assert "a lower one was found" in surface.steady(positions)
+    assert surface.converged(positions).e_tot < before - 0.005
+    assert surface.steady(positions) == ""

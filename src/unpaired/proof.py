@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -16,8 +17,9 @@ from .errors import ConvergenceError
 from .flag import Flag
 from .point import Point
 from .settled import Conformer
+from .structures.groups import freely_turning
 from .structures.modes import FLAT_CM, lowest_mode, masses_u, normal_modes
-from .structures.symmetry import operations, symmetrised
+from .structures.symmetry import equivalence, operations, symmetrised
 
 Floats = NDArray[np.float64]
 
@@ -130,6 +132,33 @@ def curvature_flags(lowest: Conformer) -> list[Flag]:
         )
         return [Flag("flat-mode", "note", advice, lowest.lowest_mode_cm, FLAT_CM)]
     return []
+
+
+def equal_minima_flags(lowest: Conformer, alike: Sequence[int]) -> list[Flag]:
+    """A note for atoms that are the same on paper and differ in this structure; methyl groups do not count.
+
+    `alike` has one number per atom, equal for atoms that turning or inverting can exchange; it may be empty.
+    """
+    molecule = lowest.molecule
+    turning = {atom for _, _, ligands in freely_turning(molecule) for atom in ligands}
+    sets = equivalence(molecule.elements, molecule.coordinates_angstrom)
+    place = {atom: number for number, members in enumerate(sets) for atom in members}
+    split: dict[int, list[int]] = {}
+    for atom, number in enumerate(alike):
+        if atom not in turning:
+            split.setdefault(number, []).append(atom)
+    lists = [
+        "[" + ", ".join(molecule.labels[atom] for atom in atoms) + "]"
+        for atoms in split.values()
+        if len({place[atom] for atom in atoms}) > 1
+    ]
+    if not lists:
+        return []
+    advice = (
+        f"{', '.join(lists)} are equal on paper and differ in this minimum, so it has equal copies; if these "
+        f"interconvert fast, the spectrum shows the mean: groups: [{', '.join(lists)}]"
+    )
+    return [Flag("equal-minima", "note", advice, float(len(lists)), 0.0)]
 
 
 def jahn_teller(surface: Surface, lowest: Conformer) -> tuple[Flag, str] | None:

@@ -17,7 +17,15 @@ from .errors import CalculationError, ConvergenceError
 from .level import Level
 from .molecule import Molecule
 from .point import Solvent
-from .proof import ROUGH, ROUGH_BASIS, conformer_of, curvature_flags, curvature_of, jahn_teller
+from .proof import (
+    ROUGH,
+    ROUGH_BASIS,
+    conformer_of,
+    curvature_flags,
+    curvature_of,
+    equal_minima_flags,
+    jahn_teller,
+)
 from .recipe.levels import DEFAULT_RELAX
 from .recipe.recipe import Recipe
 from .settled import WINDOW_KJ_MOL, Conformer, Settled, relative_kJ_mol, weigh
@@ -178,6 +186,7 @@ def _relaxed(work: _Work, begin: Sequence[Floats], origin: str, drawing: Drawing
         stage = f"relax {place}/{len(begin)}"
         started = time.perf_counter()
         try:
+            _in_a_stable_state(work, coordinates)
             end = relax(work.elements, coordinates, work.surface, TIGHT, work.report, stage)
         except CalculationError as error:
             work.story.append(f"start {place}: {error.message}")
@@ -252,6 +261,17 @@ def _downhill(work: _Work, end: Relaxed, stage: str) -> Conformer:
     return conformer
 
 
+def _in_a_stable_state(work: _Work, coordinates: Floats) -> None:
+    """Begin the relaxation on the lowest electronic state near the one that the guess leads to."""
+    if len(work.elements) == 1 or work.surface.knows(coordinates):
+        return
+    started = time.perf_counter()
+    found = work.surface.steady(coordinates)
+    work.timed("stability", started)
+    if found:
+        work.story.append(found)
+
+
 def _as_symmetric_as_it_is(work: _Work, end: Relaxed) -> Relaxed:
     """The structure with its approximate symmetry made exact, if that costs no energy."""
     angstrom = end.coordinates_bohr * BOHR_ANGSTROM
@@ -283,6 +303,8 @@ def _settled(work: _Work, kept: list[Conformer], note: str, drawing: Drawing | N
     if distorted is not None:
         flags.append(distorted[0])
         work.story.append(distorted[1])
+    alike = alike_atoms(drawing, lowest.molecule) if drawing is not None else ()
+    flags += equal_minima_flags(lowest, alike)
     return Settled(
         molecule=lowest.molecule,
         note=note,
@@ -294,5 +316,5 @@ def _settled(work: _Work, kept: list[Conformer], note: str, drawing: Drawing | N
         story=tuple(work.story),
         flags=tuple(flags),
         seconds=tuple(work.seconds.items()),
-        alike=alike_atoms(drawing, lowest.molecule) if drawing is not None else (),
+        alike=alike,
     )

@@ -22,6 +22,7 @@ from .converge import converge
 from .meanfield import mean_field
 from .mole import build_mole
 from .settings import Settings, identity
+from .stability import internal_stability
 
 Floats = NDArray[np.float64]
 Report = Callable[[str, int, float, float], None]
@@ -30,6 +31,8 @@ Report = Callable[[str, int, float, float], None]
 RELAXATION = Settings("def2-universal-jkfit", 2, 1e-9, 1e-5)
 """Fitting, grid and thresholds of relaxations: a coarser grid makes the gradient rougher than the relaxation needs."""
 
+LOWER_Eh = 1e-6
+"""By how much a second electronic state must be lower to be taken."""
 NEAR_BOHR = 0.6
 """The last density starts the next step if no nucleus has moved farther."""
 _ROUND = 8
@@ -98,6 +101,35 @@ class Surface:
             raise ConvergenceError(f"{self.level.id}: the self-consistent field did not converge on relaxing")
         self._last = np.array(coordinates_bohr), np.asarray(field.make_rdm1())
         return field
+
+    def knows(self, coordinates_bohr: Floats) -> bool:
+        """True if the gradient at these coordinates is on disk."""
+        return self._recall(np.asarray(coordinates_bohr, dtype=np.float64).reshape(-1, 3)) is not None
+
+    def steady(self, coordinates_bohr: Floats) -> str:
+        """Test the electronic state at these coordinates and go to a lower one nearby, if there is one.
+
+        The next step then starts from it. Returns what was found as a sentence, empty if the state is stable.
+        """
+        field = self.converged(coordinates_bohr)
+        verdict, curved = internal_stability(field)
+        if verdict.stable is not False or verdict.direction is None or curved is None:
+            return ""
+        before = float(field.e_tot)
+        best = None
+        for length in (0.3, -0.3, 0.8, -0.8):
+            second = self.field(coordinates_bohr)
+            density = second.make_rdm1(curved.rotated(length * verdict.direction), field.mo_occ)
+            converge(second, density)
+            if second.converged and second.e_tot < before - LOWER_Eh:
+                best = second
+                break
+        if best is None:
+            return (
+                f"the electronic state is unstable (curvature {verdict.lowest_Eh:.3f} Eh), no lower one found"
+            )
+        self._last = np.array(coordinates_bohr), np.asarray(best.make_rdm1())
+        return f"the electronic state was unstable; a lower one was found {before - best.e_tot:.5f} Eh below"
 
     def field(self, coordinates_bohr: Floats) -> Any:
         """An unconverged mean-field object at these coordinates."""
