@@ -58,6 +58,7 @@ def test_the_line_list_goes_to_standard_output(unpaired: Run, methyl: Path) -> N
     assert "level UKS-B3LYP/pcH-1, equilibrium couplings" in err
     assert "g = 2.002319 (free electron" in err
     assert "exact line positions by diagonalisation: a*a/(2 B0) = 0.0078 mT" in err
+    assert "6 lines (4 combinations of m_I) from 335." in err
 
 
 def test_lines_curve_and_plots_are_written(unpaired: Run, methyl: Path, tmp_path: Path) -> None:
@@ -99,6 +100,19 @@ def test_a_measured_spectrum_is_laid_under(unpaired: Run, methyl: Path, tmp_path
     assert "correlation 1.00000" in out
     assert list(rows((tmp_path / "both.csv").read_text())[0]) == ["field_mT", "signal", "measured"]
     assert "calculated" in (tmp_path / "both.svg").read_text()
+
+
+def test_a_measured_field_in_the_wrong_unit_is_remarked_on(
+    unpaired: Run, methyl: Path, tmp_path: Path
+) -> None:
+    unpaired("spectrum", methyl, "--output", tmp_path / "own.csv")
+    gauss = [
+        f"{float(row['field_mT']) * 10} {row['signal']}" for row in rows((tmp_path / "own.csv").read_text())
+    ]
+    (tmp_path / "recorder.txt").write_text("\n".join(gauss))
+    _, _, err = unpaired("spectrum", methyl, "--measured", tmp_path / "recorder.txt")
+    assert "first column taken as mT (no heading says)" in err
+    assert "is large: check the unit of the first column" in err
 
 
 def test_several_results_share_the_intensity(unpaired: Run, methyl: Path, tmp_path: Path) -> None:

@@ -214,8 +214,10 @@ def _parts(
 def _line_notes(lines: Lines, curve: Curve, noise: float, seed: int) -> list[str]:
     unit = lines.axis.rpartition("_")[2]
     notes = list(lines.notes)
+    kinds = lines.combinations
+    named = f" ({kinds} combinations of m_I)" if kinds is not None and kinds < len(lines) else ""
     notes.append(
-        f"{len(lines)} lines from {lines.position[0]:.4f} to {lines.position[-1]:.4f} {unit}; curve of "
+        f"{len(lines)} lines{named} from {lines.position[0]:.4f} to {lines.position[-1]:.4f} {unit}; curve of "
         f"{len(curve.position)} points from {curve.position[0]:.4f} to {curve.position[-1]:.4f} {unit}"
     )
     if noise:
@@ -225,10 +227,15 @@ def _line_notes(lines: Lines, curve: Curve, noise: float, seed: int) -> list[str
 
 def _fit_notes(path: Path, unit_note: str, fit: Overlay) -> list[str]:
     unit = fit.axis.rpartition("_")[2]
+    far = [
+        f"a shift of {fit.shift:+.4f} {unit} is large: check the unit of the first column (a heading such as "
+        "field_G names it), the frequency and g"
+    ]
     return [
         f"{path}: {len(fit.position)} points, {unit_note}",
         f"least squares: shift {fit.shift:+.4f} {unit}, scale {fit.scale:.5g}, residual "
         f"{100 * fit.residual:.2f} % of the measured signal (root mean square), correlation {fit.correlation:.5f}",
+        *(far if fit.is_far else []),
     ]
 
 

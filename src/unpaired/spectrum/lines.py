@@ -59,6 +59,13 @@ class Lines:
         """`field_mT` or `frequency_MHz`."""
         return self.sweep.axis
 
+    @property
+    def combinations(self) -> int | None:
+        """Number of different combinations of system and m_I; None if lines were joined."""
+        if self.twice_m is None:
+            return None
+        return len(np.unique(np.column_stack([self.system, self.twice_m]), axis=0))
+
     def __len__(self) -> int:
         return len(self.position)
 

@@ -15,6 +15,9 @@ from .measured_curve import MeasuredCurve
 
 FloatArray = NDArray[np.float64]
 
+FAR_SHARE = 0.02
+"""A shift by more than this share of the field is worth a remark: g would be off by 0.04."""
+
 
 @dataclass(frozen=True, eq=False)
 class Overlay:
@@ -32,6 +35,11 @@ class Overlay:
     """Root mean square of measured - calculated, as a share of the root mean square of measured."""
     correlation: float
     """Pearson's, between measured and calculated."""
+
+    @property
+    def is_far(self) -> bool:
+        """Whether the shift is larger than any usual error of g or of the field."""
+        return abs(self.shift) > FAR_SHARE * float(np.abs(self.position).mean())
 
 
 def overlay(curve: Curve, measured: MeasuredCurve) -> Overlay:
