@@ -10,6 +10,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from samples import result, state
+from scipy.constants import physical_constants
 from scipy.spatial.transform import Rotation
 
 from unpaired import constants, nuclei
@@ -72,11 +73,13 @@ def test_swapping_alpha_and_beta_flips_every_sign(seed: int) -> None:
     )
 
 
-@given(coupling_MHz=st.floats(-1e6, 1e6))
-def test_units_go_there_and_back(coupling_MHz: float) -> None:
-    assert constants.mT_from_MHz(coupling_MHz) * constants.MHZ_PER_MT == pytest.approx(
-        coupling_MHz, rel=1e-14
+@given(field_mT=st.floats(-1e6, 1e6))
+def test_one_mT_is_the_free_electron_resonance_of_one_mT(field_mT: float) -> None:
+    """h nu = g_e mu_B B with SciPy's constants, an independent table of the same edition."""
+    per_tesla_Hz = (
+        abs(physical_constants["electron g factor"][0]) * physical_constants["Bohr magneton in Hz/T"][0]
     )
+    assert constants.mT_from_MHz(per_tesla_Hz * field_mT * 1e-9) == pytest.approx(field_mT, rel=1e-9)
 
 
 PLAIN = st.one_of(

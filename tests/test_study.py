@@ -101,6 +101,16 @@ def test_a_named_isotope_scales_by_its_moment_and_leaves_the_group() -> None:
     )
 
 
+def test_a_deuteron_in_a_turning_methyl_visits_all_three_places() -> None:
+    """CH2D: protons and deuteron see the same mean density, so their couplings differ by the moments alone."""
+    mixed = dataclasses.replace(RECIPE, isotopes={"H2": "2H"})
+    rows = study(mixed, engine((0.2, -0.08, -0.1, -0.12))).rows("couplings")[1:4]
+    plain = study(RECIPE, engine((0.2, -0.08, -0.1, -0.12))).rows("couplings")[2]
+    ratio = isotope("2H").nuclear_g / isotope("1H").nuclear_g
+    assert rows[1]["a_group_mT"] == pytest.approx(plain["a_group_mT"])
+    assert rows[0]["a_group_mT"] == pytest.approx(plain["a_group_mT"] * ratio)
+
+
 def test_more_than_one_unpaired_electron_divides_by_their_number() -> None:
     triplet = dataclasses.replace(RECIPE, molecule=dataclasses.replace(METHYL, charge=1, multiplicity=3))
     doublet = study(RECIPE, engine()).rows("couplings")[0]
@@ -129,6 +139,21 @@ def test_contamination_beyond_its_band_is_flagged(scf, functional, s_squared, se
     assert ("contaminated", None, severity) in found
 
 
+def test_the_limit_grows_with_the_spin() -> None:
+    """Equal weight of the first contaminant, D/(2S+2), is equal severity."""
+    quartet = dataclasses.replace(RECIPE, molecule=dataclasses.replace(METHYL, multiplicity=4))
+    assert not any(code == "contaminated" for code, _, _ in codes(quartet, s_squared=3.75 + 0.03))
+    assert any(code == "contaminated" for code, _, _ in codes(quartet, s_squared=3.75 + 0.035))
+
+
+def test_uhf_is_said_to_exaggerate_even_when_clean() -> None:
+    assert ("exaggerated-polarisation", None, "note") in codes(with_levels(Level("UHF", "pcH-1")))
+    assert not any(
+        code == "exaggerated-polarisation"
+        for code, _, _ in codes(with_levels(Level("UKS", "pcH-1", "B3LYP")))
+    )
+
+
 def test_contamination_within_its_band_is_not_flagged() -> None:
     assert not any(code == "contaminated" for code, _, _ in codes(s_squared=0.769))
 
@@ -152,8 +177,8 @@ def test_an_energy_basis_set_is_flagged_at_every_coupled_nucleus() -> None:
 
 def test_flags_stand_beside_the_numbers_that_they_spoil() -> None:
     result = study(with_levels(Level("UHF", "cc-pVDZ")), engine(s_squared=0.9))
-    assert result.rows("states")[0]["flags"] == "contaminated;contracted-basis"
-    assert result.rows("couplings")[0]["flags"] == "contaminated;contracted-basis"
+    assert result.rows("states")[0]["flags"] == "contaminated;contracted-basis;exaggerated-polarisation"
+    assert result.rows("couplings")[0]["flags"] == "contaminated;contracted-basis;exaggerated-polarisation"
 
 
 def test_a_failed_level_keeps_its_rows_with_the_reason() -> None:

@@ -47,9 +47,11 @@ def analyse(point: Point, state: State, groups: Sequence[Group], isotopes: Seque
     add_couplings(part, point, state, groups)
     add_origin(part, spin_origin(point, state, groups, isotopes))
     part.flags += diagnostics.contamination_flags(state, point)
+    part.flags += diagnostics.exaggeration_flags(point)
     part.flags += diagnostics.restricted_flags(point)
     part.flags += diagnostics.high_spin_flags(point)
     part.flags += diagnostics.heavy_atom_flags(point)
+    part.flags += diagnostics.no_isotope_flags(point, isotopes)
     part.flags += diagnostics.contracted_basis_flags(point, isotopes)
     part.flags += diagnostics.broken_symmetry_flags(
         point, groups, [row["a_iso_MHz"] for row in part.tables["couplings"]]
@@ -120,9 +122,12 @@ def add_origin(part: Part, origin: Origin) -> None:
 
 
 def group_means(values: np.ndarray[Any, Any], groups: Sequence[Group]) -> np.ndarray[Any, Any]:
-    """Every atom's value replaced by the mean of its group."""
+    """Every atom's value replaced by the mean over the places that its group visits.
+
+    In CH2D the two protons and the deuteron are two groups that visit the same three places: the mean is over
+    all three, whichever isotope sits there when the structure is frozen.
+    """
     means = np.array(values, dtype=float)
     for group in groups:
-        members = list(group.members)
-        means[members] = values[members].mean()
+        means[list(group.members)] = values[list(group.sites)].mean()
     return means

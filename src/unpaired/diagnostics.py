@@ -35,11 +35,13 @@ def contamination_flags(state: State, point: Point) -> list[Flag]:
     if not level.is_unrestricted:
         return []
     value = contamination(state, point)
-    bad = CONTAMINATION_BAD[level.scf]
-    if value < CONTAMINATION_CAUTION:
+    # The weight of the first contaminant is about D/(2S+2): the same weight as for a doublet is the limit.
+    scale = (2 * point.molecule.spin + 2) / 3
+    bad, caution = CONTAMINATION_BAD[level.scf] * scale, CONTAMINATION_CAUTION * scale
+    if value < caution:
         return []
     severity: Severity = "bad" if value >= bad else "caution"
-    limit = bad if severity == "bad" else CONTAMINATION_CAUTION
+    limit = bad if severity == "bad" else caution
     if level.scf == "UHF":
         advice = (
             "the wavefunction mixes in higher spin states and exaggerates spin polarisation: do not judge a "
@@ -57,6 +59,44 @@ def contamination_flags(state: State, point: Point) -> list[Flag]:
     return [Flag("contaminated", severity, advice, value, limit, level.id)]
 
 
+def exaggeration_flags(point: Point) -> list[Flag]:
+    """UHF overshoots spin polarisation also where its contamination is small (CH3: D = 0.011, 1H twofold)."""
+    electrons, unpaired = point.molecule.electrons, point.molecule.multiplicity - 1
+    if point.level.scf != "UHF" or electrons == unpaired:
+        return []
+    return [
+        Flag(
+            "exaggerated-polarisation",
+            "note",
+            "UHF exaggerates spin polarisation even where its contamination is small: experiment usually lies "
+            "between its projected and its plain coupling",
+            level=point.level.id,
+        )
+    ]
+
+
+def no_isotope_flags(point: Point, isotopes: Sequence[str | None]) -> list[Flag]:
+    """Nuclei that have no coupling because the table of isotopes ends before them."""
+    return [
+        Flag(
+            "no-isotope-data",
+            "caution",
+            f"the table of isotopes has none of {element}: if it has a spin, its splitting is missing from "
+            "couplings and spectra",
+            level=point.level.id,
+            atom=label,
+        )
+        for label, element, number, isotope in zip(
+            point.molecule.labels,
+            point.molecule.elements,
+            point.molecule.atomic_numbers,
+            isotopes,
+            strict=True,
+        )
+        if isotope is None and number > HEAVY_BAD
+    ]
+
+
 def heavy_atom_flags(point: Point) -> list[Flag]:
     """Elements for which a non-relativistic first-order coupling is doubtful."""
     flags = []
@@ -68,7 +108,7 @@ def heavy_atom_flags(point: Point) -> list[Flag]:
             Flag(
                 "heavy-atom",
                 severity,
-                "no relativity and no spin-orbit coupling here: this nucleus's coupling can be off by tens of "
+                "no relativity and no spin-orbit coupling here: couplings of heavy nuclei can be off by tens of "
                 "per cent, and g shifts are large",
                 float(number),
                 float(HEAVY_BAD if severity == "bad" else HEAVY_CAUTION),
@@ -93,8 +133,8 @@ def contracted_basis_flags(point: Point, isotopes: Sequence[str | None]) -> list
                 Flag(
                     "contracted-basis",
                     "caution" if element in ("H", "He") else "bad",
-                    "this basis set was made for energies and is too rigid at the nucleus: couplings can be off "
-                    "by half or have the wrong sign; take pcH-1, pcH-2 or another set made for couplings",
+                    "too few free, tight s functions at the nucleus (value against limit): couplings can be off by "
+                    "half or have the wrong sign; take pcH-1, pcH-2 or another set made for couplings",
                     value,
                     limit,
                     point.level.id,
@@ -112,8 +152,8 @@ def restricted_flags(point: Point) -> list[Flag]:
         Flag(
             "no-polarisation",
             "note",
-            "a restricted-open level has no spin polarisation: a nucleus in the nodal plane gets zero by "
-            "construction, which is its answer and not an error",
+            "a restricted-open level shows the direct part alone, zero in a nodal plane: that is its answer and "
+            "not an error, but do not compare it with measured couplings",
             level=point.level.id,
         )
     ]

@@ -108,7 +108,7 @@ def add_projection(found: Origin, nuclei: Nuclei, pairs: Corresponding, state: S
         row["a_iso_projected_MHz"] = nuclei.coupling_MHz(atom, density[atom])
         row["a_iso_projected_mT"] = nuclei.coupling_mT(atom, density[atom])
     for group in nuclei.groups:
-        mean = float(density[list(group.members)].mean())
+        mean = float(density[list(group.sites)].mean())
         for atom in group.members:
             found.atoms[atom]["a_group_projected_mT"] = nuclei.coupling_mT(atom, mean)
     found.state["pure_spin_weight"] = projected.pure_spin_weight

@@ -5,6 +5,7 @@ from __future__ import annotations
 import textwrap
 from collections.abc import Sequence
 
+from .constants import MHZ_PER_MT
 from .result import Result, Row
 
 MARKS = {"bad": "!!", "caution": "! ", "note": "  "}
@@ -79,7 +80,12 @@ def full_report(result: Result) -> str:
         f"in {solvent['name']} (dielectric constant {solvent['dielectric']:g})" if solvent else "gas phase"
     )
     head = f"{result.radical}   charge {recipe['charge']:+d}   2S+1 = {recipe['multiplicity']}   {medium}\n"
-    parts = [head.replace("+0", "0"), "couplings in mT (MHz), mean of each group of equivalent nuclei"]
+    averaged = any(row.get("a_averaged_mT") is not None for row in result.rows("couplings"))
+    over = " and thermal mean over the conformers of conformers.csv" if averaged else ""
+    parts = [
+        head.replace("+0", "0"),
+        f"couplings in mT (MHz), mean of each group of equivalent nuclei{over}",
+    ]
     parts += [coupling_report(result), state_report(result)]
     findings = flag_report(result)
     if findings:
@@ -104,9 +110,14 @@ def _place(row: Row) -> str:
 def _coupling(rows: Sequence[Row], severity: str) -> str:
     if not rows or rows[0]["a_group_mT"] is None:
         return "-   "
-    megahertz = sum(row["a_iso_MHz"] for row in rows) / len(rows)
-    field = rows[0]["a_group_mT"]
-    return f"{_signed(field, 3)} ({_signed(megahertz, 1)}) {MARKS[severity]}"
+    field = shown_mT(rows[0])
+    return f"{_signed(field, 3)} ({_signed(field * MHZ_PER_MT, 1)}) {MARKS[severity]}"
+
+
+def shown_mT(row: Row) -> float:
+    """The value that a spectrum would show: averaged over conformers where there are several, else the group's."""
+    averaged = row.get("a_averaged_mT")
+    return float(row["a_group_mT"] if averaged is None else averaged)
 
 
 def _signed(value: float, digits: int) -> str:
