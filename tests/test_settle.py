@@ -12,8 +12,9 @@ import pytest
 
 from unpaired.constants import BOHR_ANGSTROM
 from unpaired.electronic.hessian import analytic_hessian, difference_hessian, hessian_product
-from unpaired.electronic.relax import relax
+from unpaired.electronic.relax import LOOSE, ROUGH_STEPS, relax
 from unpaired.electronic.surface import Surface
+from unpaired.errors import ConvergenceError
 from unpaired.level import Level
 from unpaired.molecule import Molecule
 from unpaired.recipe.load import load_recipe
@@ -186,3 +187,20 @@ def test_an_unstable_electronic_state_is_left_before_the_relaxation_begins() -> 
     assert "a lower one was found" in surface.steady(positions)
     assert surface.converged(positions).e_tot < before - 0.005
     assert surface.steady(positions) == ""
+
+
+def test_a_rough_relaxation_ends_where_a_strict_one_complains() -> None:
+    """A surface whose gradient never vanishes: two nuclei on a slope of constant steepness."""
+
+    def slope(coordinates: np.ndarray) -> tuple[float, np.ndarray]:
+        apart = coordinates[1, 2] - coordinates[0, 2]
+        gradient = np.zeros((2, 3))
+        gradient[0, 2], gradient[1, 2] = 0.01, -0.01
+        return -0.01 * apart, gradient
+
+    start = np.array([[0, 0, 0], [0, 0, 2.0]])
+    end = relax(("N", "N"), start, slope, LOOSE, rough=True)
+    assert end.energy_Eh < slope(start)[0]
+    assert end.steps <= ROUGH_STEPS + 1
+    with pytest.raises(ConvergenceError, match="the structure is not relaxed after"):
+        relax(("N", "N"), start, slope)

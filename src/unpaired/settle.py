@@ -144,9 +144,8 @@ def _rough(
         # Every start has a surface of its own: the density of another shape is a poor guess.
         surface = Surface(work.surface.molecule, level, solvent, folder, ROUGH)
         try:
-            end = relax(
-                work.elements, coordinates, surface, LOOSE, work.report, f"rough {place}/{len(begin)}"
-            )
+            stage = f"rough {place}/{len(begin)}"
+            end = relax(work.elements, coordinates, surface, LOOSE, work.report, stage, rough=True)
         except CalculationError as error:
             work.story.append(f"start {place}: {error.message}")
             continue

@@ -32,8 +32,9 @@ class Thresholds:
 
 
 TIGHT = Thresholds()
-LOOSE = Thresholds(1e-5, 7e-4, 1.5e-3, 1e-2, 2e-2)
+LOOSE = Thresholds(1e-5, 1e-3, 2e-3, 1e-2, 2e-2)
 MAX_STEPS = 150
+ROUGH_STEPS = 30
 
 
 @dataclass(frozen=True, eq=False)
@@ -55,10 +56,12 @@ def relax(
     thresholds: Thresholds = TIGHT,
     report: Report | None = None,
     stage: str = "relax",
+    rough: bool = False,
 ) -> Relaxed:
     """Walk downhill to a stationary structure (geomeTRIC, translation-rotation internal coordinates).
 
-    L.-P. Wang, C. C. Song, J. Chem. Phys. 144, 214108 (2016). Raises ConvergenceError after MAX_STEPS.
+    L.-P. Wang, C. C. Song, J. Chem. Phys. 144, 214108 (2016). Raises ConvergenceError after MAX_STEPS;
+    a rough relaxation ends with the lowest structure of ROUGH_STEPS at the latest.
     """
     start = np.asarray(coordinates_bohr, dtype=np.float64).reshape(-1, 3)
     if len(elements) == 1:
@@ -72,7 +75,7 @@ def relax(
     drawing.xyzs = [start * BOHR_ANGSTROM]
     drawing.build_topology()
     options = params.OptParams(
-        maxiter=MAX_STEPS,
+        maxiter=ROUGH_STEPS if rough else MAX_STEPS,
         convergence_energy=thresholds.energy_Eh,
         convergence_grms=thresholds.gradient_rms,
         convergence_gmax=thresholds.gradient_max,
@@ -89,6 +92,8 @@ def relax(
                 start.ravel(), drawing, coordinates, engine, scratch, options, print_info=False
             ).optimizeGeometry()
         except errors.GeomOptNotConvergedError:
+            if rough:
+                return seen.lowest
             raise ConvergenceError(
                 f"the structure is not relaxed after {seen.steps} steps (largest gradient {seen.largest:.1e} "
                 "Eh/bohr); start from a better structure or a SMILES"
@@ -107,6 +112,7 @@ class _Seen:
         self.energy = np.inf
         self.largest = np.inf
         self.coordinates: Floats = np.zeros((len(elements), 3))
+        self.lowest = Relaxed(self.coordinates, np.inf, np.inf, 0)
 
     def engine(self, drawing: Any) -> Any:
         """geomeTRIC's view of the surface."""
@@ -124,6 +130,8 @@ class _Seen:
         coordinates = np.array(flat, dtype=np.float64).reshape(-1, 3)
         energy, gradient = self.surface(coordinates)
         self.steps += 1
+        if energy < self.lowest.energy_Eh:
+            self.lowest = Relaxed(coordinates, energy, float(abs(gradient).max()), self.steps)
         self.energy, self.coordinates = energy, coordinates
         self.largest = float(abs(gradient).max())
         if self.report is not None:
