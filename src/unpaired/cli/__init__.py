@@ -17,6 +17,7 @@ import typer
 from ..errors import CalculationError, UnpairedError
 from .check import check
 from .contrast import contrast
+from .density import density
 from .export import export
 from .nuclei import nuclei
 from .run import run
@@ -64,7 +65,7 @@ def _with_exit_status(command: Callable[_Parameters, None]) -> Callable[_Paramet
     return run
 
 
-for _command in (run, check, table, contrast, structure, spectrum, export, nuclei):
+for _command in (run, check, table, contrast, density, structure, spectrum, export, nuclei):
     app.command()(_with_exit_status(_command))
 
 
