@@ -3,6 +3,7 @@
 import numpy as np
 import pytest
 
+from unpaired.electronic import solutions
 from unpaired.electronic import solve as solving
 from unpaired.electronic.boundary import library_errors
 from unpaired.errors import CalculationError, ChoiceError, ConvergenceError, EngineError, ResourceError
@@ -73,6 +74,6 @@ def test_what_does_not_converge_is_an_error_and_says_what_was_tried(monkeypatch)
         field.e_tot, field.converged = -1.0, False
         return ("extrapolation (DIIS)", "second order")
 
-    monkeypatch.setattr(solving, "converge", stuck)
+    monkeypatch.setattr(solutions, "converge", stuck)
     with pytest.raises(ConvergenceError, match="second order"):
         solving.solve(hydrogen_molecule_ion())

@@ -184,7 +184,6 @@ def test_one_mistake_is_one_problem(tmp_path: Path) -> None:
 @pytest.mark.parametrize(
     ("line", "feature", "address"),
     [
-        ("levels: [{scf: UHF, basis: pcH-1, solution: 2}]", "levels.solution", "levels[1].solution"),
         ("motion: {rotors: false}", "motion.rotors", "motion.rotors"),
         ("motion: {inversion: true}", "motion.inversion", "motion.inversion"),
         ("motion: {torsion: true}", "motion.torsion", "motion.torsion"),

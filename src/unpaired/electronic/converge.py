@@ -51,7 +51,7 @@ def converge(field: Any, density: Any) -> tuple[str, ...]:
     return tuple(used)
 
 
-def second_order(field: Any, orbitals: Any, occupations: Any, cycles: int = 40) -> None:
+def second_order(field: Any, orbitals: Any, occupations: Any, cycles: int = 25) -> None:
     """Second-order descent from given orbitals and occupations, which stay what they are; fills `field`.
 
     Where the second-order response is not sound the descent is first order with a level shift.
@@ -115,4 +115,4 @@ def _adiis(field: Any, density: Any) -> None:
         _diis(field, field.get_init_guess(key="1e"))
     finally:
         field.DIIS = scheme
-    second_order(field, field.mo_coeff, field.mo_occ, cycles=80)
+    second_order(field, field.mo_coeff, field.mo_occ, cycles=50)

@@ -10,6 +10,8 @@ import numpy as np
 import scipy.linalg
 from numpy.typing import NDArray
 
+from .frame import turned_grids
+
 Array = NDArray[np.float64]
 
 RESPONSE_GRID = 0
@@ -108,11 +110,8 @@ def _response(
     continuum = getattr(field, "with_solvent", None)
     bare = field if continuum is None else field.undo_solvent()
     if hasattr(bare, "xc") and response_grid is not None and response_grid < bare.grids.level:
-        from pyscf import dft
-
         bare = bare.copy()
-        bare.grids = dft.Grids(bare.mol)
-        bare.grids.level = response_grid
+        bare.grids = turned_grids(bare.mol, response_grid)
     if hasattr(bare, "xc") and bare.grids.coords is None:
         bare.grids.build(with_non0tab=True)
     inner = bare.gen_response(orbitals, occupied, hermi=1, with_nlc=False)

@@ -10,33 +10,32 @@ import numpy as np
 
 from ..errors import ConvergenceError
 from ..point import Point
-from ..state import Solution, State
+from ..state import Plain, Solution, State
 from .boundary import library_errors
-from .converge import converge
 from .meanfield import mean_field
 from .mole import build_mole
+from .search import Outcome, search
 from .settings import settings
-from .start import initial_density
+from .solutions import Found
 
 Report = Callable[[str, int, float], None]
 """Called with (stage, iteration, energy_Eh) while a calculation runs."""
 
 
-def solve(point: Point, report: Report | None = None) -> State:
-    """Converge the level of a point and return its state as plain arrays.
+def solve(point: Point, report: Report | None = None, start: str = "atomic superposition") -> State:
+    """Find the electronic state of a point and return every solution met as plain arrays, lowest first.
 
+    `start` is the first density tried (a name of `guess.DENSITIES`); what is found should not depend on it.
     Raises CalculationError (ConvergenceError, ResourceError, EngineError) with the reason.
     """
-    with library_errors(f"{point.level.id}"):
-        return _solve(point, report)
+    with library_errors(point.level.id):
+        return _solve(point, report, start)
 
 
-def _solve(point: Point, report: Report | None) -> State:
+def _solve(point: Point, report: Report | None, start: str) -> State:
     started = time.perf_counter()
     mole = build_mole(point)
-    setting = settings(point.level)
-    field = mean_field(mole, point.level, point.solvent, setting)
-    field.chkfile = None
+    field = mean_field(mole, point.level, point.solvent, settings(point.level))
     iterations = 0
 
     def watch(local: dict[str, Any]) -> None:
@@ -45,41 +44,61 @@ def _solve(point: Point, report: Report | None) -> State:
         if report is not None:
             report("scf", iterations, float(local["e_tot"]))
 
+    def watch_search(local: dict[str, Any]) -> None:
+        if report is not None:
+            report("search", 0, float(local["e_tot"]))
+
     field.callback = watch
-    used = converge(field, initial_density(point, mole, setting))
-    if not field.converged:
-        raise ConvergenceError(
-            f"not converged after {iterations} iterations of {', then '.join(used)}; "
-            "check structure, charge and multiplicity, or try another level"
-        )
-    story = () if len(used) == 1 else (f"converged by {', then '.join(used)}",)
+    outcome = search(point, field, start, watch_search)
+    taken = _asked_for(outcome.found, point.level.solution)
     return State(
-        solutions=(as_solution(field, origin="atomic superposition"),),
-        taken=0,
-        overlap=field.get_ovlp(),
+        solutions=tuple(_as_solution(found) for found in outcome.found),
+        taken=taken,
+        overlap=np.asarray(field.get_ovlp()),
         ao_at_nuclei=mole.eval_gto("GTOval", mole.atom_coords()),
         iterations=iterations,
         wall_s=time.perf_counter() - started,
-        story=story,
+        story=outcome.story,
+        engine=_engine(outcome, outcome.found[taken]),
     )
 
 
-def as_solution(field: Any, origin: str, stable: bool | None = None, label: str = "") -> Solution:
-    """Plain arrays of a converged mean-field object; restricted-open orbitals are written twice."""
-    orbitals = np.asarray(field.mo_coeff)
-    energies = np.asarray(field.mo_energy)
-    occupations = np.asarray(field.mo_occ)
-    if orbitals.ndim == 2:
-        orbitals = np.stack([orbitals, orbitals])
-        occupations = np.stack([occupations > 0, occupations > 1]).astype(float)
-        energies = np.stack([energies, energies])
+def _asked_for(found: tuple[Found, ...], wanted: int | str | None) -> int:
+    """Index of the solution that the level asks for; the lowest that is not known to be unstable by default."""
+    if wanted is None:
+        return next((k for k, one in enumerate(found) if one.stable is not False), 0)
+    if isinstance(wanted, int) and wanted <= len(found):
+        return wanted - 1
+    for k, one in enumerate(found):
+        if isinstance(wanted, str) and one.label.casefold() == wanted.strip().casefold():
+            return k
+    there = "; ".join(f"{k}: {one.label}, {one.energy_Eh:.6f} Eh" for k, one in enumerate(found, start=1))
+    raise ConvergenceError(f"the solution asked for ({wanted}) was not found; there are {there}")
+
+
+def _engine(outcome: Outcome, taken: Found) -> dict[str, Plain]:
+    return {
+        "point_group": outcome.point_group,
+        "degenerate": taken.degenerate,
+        "symmetry_broken": taken.broken,
+        "lowest_curvature_Eh": taken.verdict.lowest_Eh,
+        "stability_note": taken.verdict.note,
+        "suspicions": ", ".join(outcome.suspicions),
+        "starts": outcome.starts,
+    }
+
+
+def _as_solution(found: Found) -> Solution:
+    """Plain arrays; restricted-open orbitals are written twice."""
+    orbitals, occupations = found.both_spins()
+    energies = found.orbital_energies
     return Solution(
-        energy_Eh=float(field.e_tot),
-        s_squared=float(field.spin_square()[0]),
-        stable=stable,
-        label=label,
-        origin=origin,
+        energy_Eh=found.energy_Eh,
+        s_squared=found.s_squared,
+        stable=found.stable,
+        label=found.label,
+        origin=found.origin,
         orbitals=orbitals,
         occupations=occupations,
-        orbital_energies_Eh=energies,
+        orbital_energies_Eh=energies if energies.ndim == 2 else np.stack([energies, energies]),
     )

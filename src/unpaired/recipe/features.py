@@ -10,7 +10,6 @@ NOT_BUILT: dict[str, str] = {
     "motion.inversion": "averaging over inversion",
     "motion.torsion": "averaging over torsion",
     "motion.vibration": "averaging over vibration",
-    "levels.solution": "asking for one of several solutions",
 }
 """What each feature does, by the key that asks for it."""
 
