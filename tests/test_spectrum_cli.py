@@ -228,3 +228,25 @@ def test_export_refuses_in_one_sentence(unpaired: Run, methyl: Path, options: li
     assert (status, out) == (2, "")
     assert words in err
     assert err.count("\n") == 1
+
+
+@pytest.mark.slow
+def test_what_a_run_leaves_is_what_both_commands_take(unpaired: Run, tmp_path: Path) -> None:
+    (tmp_path / "hydrogen.xyz").write_text("1\n\nH 0 0 0\n")
+    recipe = tmp_path / "hydrogen.yaml"
+    recipe.write_text(
+        "radical: hydrogen\nstructure: hydrogen.xyz\nlevels: [{scf: UHF, basis: pcH-1}]\n"
+        'g: {value: 2.0022, source: "invented for a test"}\n'
+    )
+    status, _, _ = unpaired("run", recipe, "--out", tmp_path / "results")
+    assert status == 0
+    _, out, err = unpaired("spectrum", tmp_path / "results" / "hydrogen")
+    low, high = (float(line["field_mT"]) for line in rows(out))
+    # The exact atom splits by 50.97 mT at this frequency (physics notes section 2), pcH-1 is 1.7 % low (section 3).
+    assert high - low == pytest.approx(50.97 * 0.983, rel=0.003)
+    assert "g = 2.002200 (measured, from the recipe: invented for a test)" in err
+    _, out, _ = unpaired("export", tmp_path / "results" / "hydrogen")
+    data = json.loads(out)
+    Draft202012Validator(schema()).validate(data)
+    assert data["provenance"]["packages"]["pyscf"]
+    assert data["groups"][0]["nuclei"][0]["dipolar_MHz"] == [pytest.approx([0, 0, 0], abs=1e-6)] * 3
