@@ -32,7 +32,6 @@ study
 report tables
 spinsystem
 spectrum contrast
-figures
 """
 """From the bottom up. A package counts as one line; a module that is not here belongs above all of these."""
 
