@@ -21,6 +21,8 @@ Array = NDArray[np.float64]
 
 BATCH_MB = 96.0
 """Size of the unpacked three-index integrals worked on at once."""
+BUFFER_MB = 150.0
+"""Memory beside the integrals while they are made."""
 
 _last: tuple[str, Any, Array] | None = None
 """Key, auxiliary molecule and integrals of the molecule seen last in this process."""
@@ -37,9 +39,11 @@ class Fitting(df.DF):  # type: ignore[misc]
             self.auxmol, self._cderi = _last[1], _last[2]
             return self
         _last = None
-        super().build()
-        if isinstance(self._cderi, np.ndarray):
-            _last = (key, self.auxmol, self._cderi)
+        self.auxmol = df.addons.make_auxmol(self.mol, self.auxbasis)
+        words = self.auxmol.nao * (self.auxmol.nao + self.mol.nao * (self.mol.nao + 1) // 2)
+        memory_MB = words * 8 / 0.98e6 + BUFFER_MB  # the library takes what it is given for its buffers
+        self._cderi = df.incore.cholesky_eri(self.mol, auxmol=self.auxmol, max_memory=memory_MB)
+        _last = (key, self.auxmol, self._cderi)
         return self
 
     def get_jk(
@@ -49,7 +53,7 @@ class Fitting(df.DF):  # type: ignore[misc]
         """Coulomb and exchange matrices of real symmetric density matrices; others go to the library."""
         if self._cderi is None:
             self.build()
-        if omega is not None or hermi != 1 or np.iscomplexobj(dm) or not isinstance(self._cderi, np.ndarray):
+        if omega is not None or hermi != 1 or np.iscomplexobj(dm):
             return super().get_jk(dm, hermi, with_j, with_k, direct_scf_tol, omega)  # type: ignore[no-any-return]
         shape = np.shape(dm)
         matrices = np.asarray(dm).reshape(-1, *shape[-2:])

@@ -9,6 +9,9 @@ from ..point import Solvent
 from .frame import turned_grids
 from .settings import Settings
 
+EXACT_INTEGRALS_MB = 8000
+"""Exact integrals are kept in memory up to this size, and computed anew in every iteration above it."""
+
 
 def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Settings) -> Any:
     """An unconverged mean-field object. Fitted first, continuum next: the other order refuses gradients.
@@ -35,6 +38,8 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
         elements = {mole.atom_pure_symbol(place) for place in range(mole.natm)}
         shells = {element: auxiliary_basis(settings.fitting_set, element) for element in elements}
         field = field.density_fit(with_df=Fitting(mole, shells))
+    else:
+        field.max_memory = EXACT_INTEGRALS_MB
     if solvent is not None:
         field = field.PCM()
         field.with_solvent.method = "IEF-PCM"
