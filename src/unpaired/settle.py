@@ -64,15 +64,18 @@ class _Work:
         self.seconds[stage] = self.seconds.get(stage, 0.0) + time.perf_counter() - started
 
 
-def settle(recipe: Recipe, report: Report | None = None, folder: Path | None = None) -> Settled:
+def settle(
+    recipe: Recipe, report: Report | None = None, folder: Path | None = None, seed: int = 0
+) -> Settled:
     """The structure of a recipe: as the file has it, or built, relaxed and proven.
 
     `report(stage, step, energy_Eh, largest_gradient)` is called after every step. With a folder (OUT/.store)
-    every step is kept there, and a run that was killed goes on where it was. Raises StructureError for a
-    drawing that cannot be used and CalculationError if no start could be relaxed.
+    every step is kept there, and a run that was killed goes on where it was. `seed` shakes the starts of a
+    drawing differently. Raises StructureError for a drawing that cannot be used and CalculationError if no start
+    could be relaxed.
     """
     if recipe.smiles is not None:
-        return _from_drawing(recipe, read_smiles(recipe.smiles), report, folder)
+        return _from_drawing(recipe, read_smiles(recipe.smiles), report, folder, seed)
     if not recipe.relax:
         return unsettled(recipe)
     assert recipe.molecule is not None
@@ -115,9 +118,11 @@ def _work(recipe: Recipe, molecule: Molecule, report: Report | None, folder: Pat
     return _Work(recipe, level, Surface(molecule, level, recipe.solvent, folder), report)
 
 
-def _from_drawing(recipe: Recipe, drawing: Drawing, report: Report | None, folder: Path | None) -> Settled:
+def _from_drawing(
+    recipe: Recipe, drawing: Drawing, report: Report | None, folder: Path | None, seed: int
+) -> Settled:
     started = time.perf_counter()
-    begin = [coordinates / BOHR_ANGSTROM for coordinates in starts(drawing)]
+    begin = [coordinates / BOHR_ANGSTROM for coordinates in starts(drawing, seed)]
     molecule = Molecule(drawing.elements, begin[0], recipe.charge, recipe.multiplicity)
     work = _work(recipe, molecule, report, folder)
     work.timed("drawing", started)

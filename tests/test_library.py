@@ -1,0 +1,108 @@
+"""The library of radicals: structures made from a drawing, couplings beside measured ones.
+
+The measured values and their sources stand in the recipes; "from memory" is said there where nobody read them, and
+rows that the compilation marks as doubtful decide nothing. The limit was set before anything was computed: 15 % or
+0.08 mT, whichever is larger, at UKS-B3LYP/pcH-1. Couplings that miss it are listed with the reason, and a test fails
+as soon as one of them no longer misses.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+from functools import cache
+from pathlib import Path
+
+import pytest
+
+from unpaired.recipe.load import load_recipe
+from unpaired.result import Result
+from unpaired.settle import settle
+from unpaired.structures.conformers import same_shape
+from unpaired.structures.xyz import read_xyz
+from unpaired.study import study
+
+ROOT = Path(__file__).parent.parent
+RADICALS = (
+    "carbon-dioxide-anion",
+    "difluoride-anion",
+    "ethyl",
+    "fluoromethyl",
+    "formaldehyde-cation",
+    "formyl",
+    "nitrogen-dioxide",
+    "vinyl",
+)
+NO_INVERSION = "the radical inverts fast, which a static structure does not contain"
+MISSES = {
+    ("carbon-dioxide-anion", "C1"): "measured in a crystal of sodium formate; a gas-phase anion here",
+    ("difluoride-anion", "F1"): "self-interaction error: the hole of a three-electron bond is too diffuse",
+    ("fluoromethyl", "C1"): NO_INVERSION,
+    ("fluoromethyl", "H3"): NO_INVERSION,
+    ("vinyl", "H3"): NO_INVERSION,
+    ("vinyl", "H5"): NO_INVERSION,
+    ("vinyl", "C2"): "a small difference of direct and polarisation parts",
+}
+
+
+def _cases() -> list[object]:
+    found = []
+    for name in RADICALS:
+        for place, item in enumerate(load_recipe(ROOT / "recipes" / f"{name}.yaml").measured):
+            if item.atoms is None or "doubtful" in item.source:
+                continue
+            first = item.atoms[0]
+            reason = MISSES.get((name, first))
+            marks = [pytest.mark.xfail(strict=True, reason=reason)] if reason else []
+            found.append(pytest.param(name, place, id=f"{name} {first}", marks=marks))
+    return found
+
+
+@cache
+def result(name: str) -> Result:
+    """UKS-B3LYP/pcH-1, the recipe's last level."""
+    recipe = load_recipe(ROOT / "recipes" / f"{name}.yaml")
+    return study(dataclasses.replace(recipe, levels=recipe.levels[-1:]))
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize(("name", "place"), _cases())
+def test_a_measured_coupling_is_hit(name: str, place: int) -> None:
+    item = result(name).recipe["measured"][place]
+    values = [row["a_iso_mT"] for row in result(name).rows("couplings") if row["atom"] in item["atoms"]]
+    predicted = sum(values) / len(values)
+    measured = item["coupling_mT"]
+    if item["sign"] == "unknown":
+        predicted = abs(predicted)
+    assert predicted == pytest.approx(measured, abs=max(0.15 * abs(measured), 0.08))
+
+
+@pytest.mark.parametrize("path", sorted((ROOT / "molecules").glob("*.xyz")), ids=lambda path: path.stem)
+def test_every_shipped_structure_says_how_it_was_made(path: Path) -> None:
+    assert "B3LYP/pcseg-1" in read_xyz(path).comment
+
+
+@pytest.mark.parametrize(
+    "path", sorted((ROOT / "molecules/drawn").glob("*.yaml")), ids=lambda path: path.stem
+)
+def test_every_drawing_can_be_read_and_has_the_atoms_of_its_structure(path: Path) -> None:
+    recipe = load_recipe(path)
+    structure = ROOT / "molecules" / f"{path.stem}.xyz"
+    assert recipe.radical == path.stem
+    if structure.exists() and recipe.smiles is not None:
+        from unpaired.structures.smiles import read_smiles
+
+        assert read_smiles(recipe.smiles).elements == read_xyz(structure).elements
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("name", ["formyl", "amidogen"])
+def test_another_random_start_ends_in_the_shipped_minimum(name: str) -> None:
+    """To 1e-5 Eh, as the project asks."""
+    settled = settle(load_recipe(ROOT / "molecules/drawn" / f"{name}.yaml"), seed=7)
+    shipped = read_xyz(ROOT / "molecules" / f"{name}.xyz")
+    energy = float(shipped.comment.split(" Eh")[0].split()[-1])
+    assert settled.conformers[0].energy_Eh == pytest.approx(energy, abs=1e-5)
+    assert settled.minimum is True
+    assert same_shape(
+        shipped.elements, shipped.coordinates_bohr, settled.molecule.coordinates_bohr, tolerance=0.02
+    )
