@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from unpaired.constants import BOHR_ANGSTROM
+from unpaired.constants import BOHR_ANGSTROM, MHZ_PER_MT
 from unpaired.electronic.integrals import minimal_basis
 from unpaired.electronic.mole import build_mole
 from unpaired.electronic.solve import solve
@@ -63,6 +63,21 @@ def allyl():
     return "CCCHHHHH", np.vstack(
         [[[0, 0, 0], end, end * [-1, 1, 1], [0, -1.085, 0]], one_side[1:], one_side[1:] * [-1, 1, 1]]
     )
+
+
+def dimethyl_nitroxide():
+    """Planar, R(NO) 1.28, R(NC) 1.46, R(CH) 1.09 angstrom, CNC 121 degrees, tetrahedral methyl groups."""
+    half, tilt = np.deg2rad(121 / 2), np.deg2rad(180 - 109.5)
+    carbon = 1.46 * np.array([np.sin(half), -np.cos(half), 0])
+    along, up = carbon / np.linalg.norm(carbon), np.array([0, 0, 1])
+    hydrogens = [
+        carbon
+        + 1.09
+        * (np.cos(tilt) * along + np.sin(tilt) * (np.cos(turn) * up + np.sin(turn) * np.cross(along, up)))
+        for turn in AROUND
+    ]
+    one_side = np.array([carbon, *hydrogens])
+    return "NOCHHHCHHH", np.vstack([[[0, 0, 0], [0, 1.28, 0]], one_side, one_side * [-1, 1, 1]])
 
 
 @cache
@@ -237,3 +252,26 @@ def test_a_diffuse_state_says_that_it_has_no_local_pairs():
     assert "too diffuse" in origin.details["populations"]
     assert origin.populations == []
     assert [row["kind"] for row in origin.polarisation] == ["not localised"]
+
+
+def test_the_alpha_proton_has_a_minus_zero_plus_tensor():
+    """Common practice: principal values of an alpha proton follow (-, 0, +) at about 30 MHz."""
+    row = studied(methyl)[2].atoms[1]
+    assert row["t_1_MHz"] == pytest.approx(-30, rel=0.5)
+    assert row["t_2_MHz"] == pytest.approx(0, abs=5)
+    assert row["t_3_MHz"] == pytest.approx(30, rel=0.5)
+    for place in (1, 2, 3):
+        whole = row[f"A_{place}_MHz"] - row[f"t_{place}_MHz"]
+        assert whole == pytest.approx((row["direct_mT"] + row["polarisation_mT"]) * MHZ_PER_MT, abs=1e-9)
+
+
+@pytest.mark.slow
+def test_the_nitrogen_tensor_of_a_nitroxide():
+    """Published for TEMPO in toluene: 14N principal values 16.8, 20.5, 95.9 MHz; their anisotropic part, 15 %.
+
+    Dimethyl nitroxide stands for TEMPO: the same C-N(O)-C unit without the ring.
+    """
+    published = np.array([16.8, 20.5, 95.9])
+    row = studied(dimethyl_nitroxide)[2].atoms[0]
+    found = [row[f"t_{place}_MHz"] for place in (1, 2, 3)]
+    assert found == pytest.approx(published - published.mean(), rel=0.15)
