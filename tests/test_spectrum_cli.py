@@ -95,7 +95,7 @@ def test_a_measured_spectrum_is_laid_under(unpaired: Run, methyl: Path, tmp_path
         tmp_path / "both.svg",
     )
     assert status == 0
-    assert "2001 points, first column in G by its heading" in out
+    assert "2001 points (heading lines: 1), first column in G by its heading" in out
     assert "shift +0.5000 mT, scale 3, residual 0.00 % of the measured signal" in out
     assert "correlation 1.00000" in out
     assert list(rows((tmp_path / "both.csv").read_text())[0]) == ["field_mT", "signal", "measured"]

@@ -43,7 +43,7 @@ def plot(*systems: SpinSystem, fitted: bool = False, width_mT: float = 0.05) -> 
     curve = draw(lines, Width(width_mT), Shape(width_mT), 1.0)
     fit = None
     if fitted:
-        fit = overlay(curve, MeasuredCurve("field_mT", curve.position + 0.4, 7 * curve.signal, ""))
+        fit = overlay(curve, MeasuredCurve("field_mT", curve.position + 0.4, 7 * curve.signal, 0, ""))
     return spectrum_figure(lines, curve, lines.sweep, Caption.of(lines, lines.sweep, width_mT), fit)
 
 

@@ -61,6 +61,15 @@ def test_separators_commas_and_headings_are_understood(tmp_path: Path, content: 
     assert found.signal == pytest.approx(SIGNALS)
 
 
+@pytest.mark.parametrize(
+    "heading", ["2026-12-01 10:30\n", "1024\n", "sample 3; run 2\n10\n", "9.5-GHz run\n"]
+)
+def test_headings_may_begin_with_a_number(tmp_path: Path, heading: str) -> None:
+    found = read(tmp_path, heading + text("{};{}"))
+    assert found.position == pytest.approx(FIELDS)
+    assert found.heading_lines == heading.count("\n")
+
+
 def test_a_downward_sweep_is_turned_round(tmp_path: Path) -> None:
     upward = text("{} {}")
     found = read(tmp_path, "\n".join(reversed(upward.splitlines())))
@@ -109,6 +118,7 @@ def test_a_unit_in_the_heading_is_obeyed(tmp_path: Path, heading: str, axis: str
         ),
         ("1 2\n3 4\n", r"measured.txt: holds 2 lines of two numbers; a spectrum needs at least 8"),
         ("", r"measured.txt: holds 0 lines"),
+        ("330.5 abc\n" + text("{} {}"), r'measured.txt:1: "abc" is not a number'),
         ("\n".join(["330 1"] * 5 + ["330 2"] * 5), r"first column hardly changes"),
         ("\n".join(f"{k} 1" for k in range(10)), r"second column is constant"),
     ],
@@ -134,7 +144,7 @@ def as_measured(curve: Curve, shift: float, scale: float, noise: float = 0.0) ->
     noisy = with_noise(curve, noise, seed=3) if noise else curve
     grid = np.linspace(curve.position[0] + shift - 2, curve.position[-1] + shift + 3, 3001)
     signal = np.interp(grid - shift, noisy.position, scale * noisy.signal, left=0, right=0)
-    return MeasuredCurve(curve.axis, grid, signal, "")
+    return MeasuredCurve(curve.axis, grid, signal, 0, "")
 
 
 @pytest.mark.parametrize("shift", [0.0, 1.234, -7.5, 40.0])
@@ -178,4 +188,4 @@ def test_axes_must_agree() -> None:
     with pytest.raises(
         InputError, match="measured spectrum is over frequency_MHz, the calculated one over field_mT"
     ):
-        overlay(curve, MeasuredCurve("frequency_MHz", measured.position, measured.signal, ""))
+        overlay(curve, MeasuredCurve("frequency_MHz", measured.position, measured.signal, 0, ""))

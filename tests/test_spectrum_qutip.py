@@ -96,3 +96,23 @@ def test_a_group_of_equivalent_nuclei_is_that_of_qutip() -> None:
     expected = sorted(set(np.round(fields_by_root_search(methyl), 7)))
     assert np.sort(position).tolist() == pytest.approx(expected, abs=1e-6)
     assert weight.sum() == pytest.approx(1.0, abs=1e-12)
+
+
+def test_intensities_are_those_of_qutip() -> None:
+    nuclei = [("1H", 900.0), ("14N", 200.0)]  # large, so that intensities differ
+    position, weight, _ = exact_lines(
+        [splitting(name, 1, a) for name, a in nuclei], Sweep(ELECTRON_G, frequency_MHz=FREQUENCY_MHz)
+    )
+    hyperfine, zeeman, flip = hamiltonian(nuclei)
+    areas = []
+    for field in fields_by_root_search(nuclei):
+        values, vectors = (hyperfine + field * zeeman).eigenstates()
+        matrix = np.hstack([vector.full() for vector in vectors])
+        strength = np.abs(matrix.conj().T @ flip.full() @ matrix) ** 2
+        i, j = np.unravel_index(
+            np.abs(values[None, :] - values[:, None] - FREQUENCY_MHz).argmin(), strength.shape
+        )
+        slope = (vectors[j].dag() * zeeman * vectors[j] - vectors[i].dag() * zeeman * vectors[i]).real
+        areas.append(strength[i, j] / slope)  # area of a line in a field sweep
+    strong = np.argsort(position)[np.sort(weight)[-len(areas)] <= weight[np.argsort(position)]]
+    assert weight[strong] / weight[strong].sum() == pytest.approx(np.array(areas) / sum(areas), rel=1e-5)

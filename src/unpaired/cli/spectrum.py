@@ -14,6 +14,7 @@ if TYPE_CHECKING:
     from ..spectrum.curve import Curve
     from ..spectrum.isotopologues import Question
     from ..spectrum.lines import Lines
+    from ..spectrum.measured_curve import MeasuredCurve
     from ..spectrum.overlay import Overlay
     from ..spectrum.splitting import Sweep
     from ..spinsystem import SpinSystem
@@ -142,7 +143,7 @@ def spectrum(
     if measured is not None:
         read = read_measured_curve(measured)
         fit = overlay(curve, read)
-        notes += _fit_notes(measured, read.unit_note, fit)
+        notes += _fit_notes(measured, read, fit)
     if lines is not None:
         write_atomically(lines, lines_csv(listed))
         notes.append(f"line list written to {lines}")
@@ -225,14 +226,14 @@ def _line_notes(lines: Lines, curve: Curve, noise: float, seed: int) -> list[str
     return notes
 
 
-def _fit_notes(path: Path, unit_note: str, fit: Overlay) -> list[str]:
+def _fit_notes(path: Path, read: MeasuredCurve, fit: Overlay) -> list[str]:
     unit = fit.axis.rpartition("_")[2]
     far = [
         f"a shift of {fit.shift:+.4f} {unit} is large: check the unit of the first column (a heading such as "
         "field_G names it), the frequency and g"
     ]
     return [
-        f"{path}: {len(fit.position)} points, {unit_note}",
+        f"{path}: {len(fit.position)} points (heading lines: {read.heading_lines}), {read.unit_note}",
         f"least squares: shift {fit.shift:+.4f} {unit}, scale {fit.scale:.5g}, residual "
         f"{100 * fit.residual:.2f} % of the measured signal (root mean square), correlation {fit.correlation:.5f}",
         *(far if fit.is_far else []),

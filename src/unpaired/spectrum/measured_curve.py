@@ -35,6 +35,8 @@ class MeasuredCurve:
     position: FloatArray
     """mT or MHz, ascending, each once."""
     signal: FloatArray
+    heading_lines: int
+    """Lines above the numbers that were taken as headings."""
     unit_note: str
     """Which unit the file's first column was taken to have, and why."""
 
@@ -42,10 +44,10 @@ class MeasuredCurve:
 def read_measured_curve(path: str | Path) -> MeasuredCurve:
     """Read a file of two columns: blanks, tabs, semicolons or commas between; decimal points or commas.
 
-    Lines that do not begin with a number are headings as long as no number has come; empty lines and lines
-    that begin with # or % do not count. A unit in the headings is obeyed (mT, T, G, Gauss; a frequency in MHz
-    or GHz), else the first column is in mT. Descending sweeps are turned round; repeated positions are
-    averaged. Raises InputError with file and line.
+    Before the first pair of numbers, lines that do not begin with a number or hold nothing but one are
+    headings; empty lines and lines that begin with # or % do not count. A unit in the headings is obeyed (mT, T,
+    G, Gauss; a frequency in MHz or GHz), else the first column is in mT. Descending sweeps are turned round;
+    repeated positions are averaged. Raises InputError with file and line.
     """
     place = Path(path)
     try:
@@ -60,8 +62,11 @@ def read_measured_curve(path: str | Path) -> MeasuredCurve:
         content = line.strip().replace('"', "")
         if not content:
             continue
-        if content[0] in "#%" or not (rows or _NUMBER.match(content)):
+        if content[0] in "#%":
             headings += [] if rows else [content]
+            continue
+        if not rows and _is_heading(content):
+            headings.append(content)
             continue
         if not rows:
             separator = _separator(content)
@@ -82,6 +87,7 @@ def read_measured_curve(path: str | Path) -> MeasuredCurve:
         axis="frequency_MHz" if unit in FREQUENCIES else "field_mT",
         position=position,
         signal=signal,
+        heading_lines=len(headings),
         unit_note=f"first column in {unit} by its heading"
         if unit
         else "first column taken as mT (no heading says)",
@@ -94,6 +100,12 @@ def _decoded(raw: bytes) -> str:
         return raw.decode(encoding)
     except UnicodeDecodeError:
         return raw.decode("latin-1")
+
+
+def _is_heading(line: str) -> bool:
+    """Whether a line above the numbers is none of them: a name, a date, the number of points."""
+    parts = [part for part in line.rstrip(";, \t").split(_separator(line)) if part.strip()]
+    return len(parts) < 2 or not _NUMBER.fullmatch(parts[0].strip())
 
 
 def _separator(line: str) -> str | None:
