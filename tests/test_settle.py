@@ -23,6 +23,7 @@ from unpaired.settle import prove, settle, unsettled
 from unpaired.settled import Conformer, weigh
 from unpaired.structures.modes import masses_u, normal_modes
 from unpaired.structures.xyz import read_xyz, xyz_text
+from unpaired.study import study
 
 CHEAP = Level("UKS", "pcseg-0", "B3LYP")
 RELAX = "relax: {functional: B3LYP, basis: pcseg-0}\n"
@@ -204,3 +205,15 @@ def test_a_rough_relaxation_ends_where_a_strict_one_complains() -> None:
     assert end.steps <= ROUGH_STEPS + 1
     with pytest.raises(ConvergenceError, match="the structure is not relaxed after"):
         relax(("N", "N"), start, slope)
+
+
+def test_a_recipe_with_a_drawing_goes_through_the_main_job(tmp_path: Path) -> None:
+    """The helium cation has one electron: no vibration, one proven structure, 3He at -309.21 mT measured."""
+    levels = "levels: [{scf: UHF, basis: pcH-2}]\n"
+    result = study(recipe(tmp_path, "[He+]", levels))
+    (row,) = result.rows("states")
+    assert row["minimum"] is True
+    assert row["lowest_mode_cm"] is None
+    assert result.rows("couplings")[0]["a_iso_mT"] == pytest.approx(-309.21, rel=0.01)
+    assert "from SMILES [He+]" in result.structure_note
+    assert result.provenance["structure"]["story"]

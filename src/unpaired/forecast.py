@@ -40,7 +40,11 @@ def forecast_report(recipes: Sequence[Recipe]) -> str:
                 ]
             )
     text = layout(head, lines, left=2)
-    return text + f"{len(lines)} points, about {total_s:.0f} s on {machine.cores()} cores\n"
+    text += f"{len(lines)} points, about {total_s:.0f} s on {machine.cores()} cores\n"
+    rough = [planned.recipe.radical for planned in plans if planned.recipe.relax]
+    if rough:
+        text += f"relaxed first, which is not in these times: {', '.join(rough)}\n"
+    return text
 
 
 def require_memory(plans: Sequence[Plan]) -> None:
