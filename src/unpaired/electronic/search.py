@@ -15,7 +15,7 @@ from ..point import Point
 from .guess import density_from_nuclei, projected
 from .meanfield import mean_field
 from .mole import build_mole
-from .settings import SETTINGS
+from .settings import SCOUT
 from .solutions import Explorer, Found
 from .stability import Verdict
 
@@ -105,7 +105,7 @@ def _scout(point: Point, field: Any, watch: Watch) -> Explorer | None:
     mole = build_mole(replace(point, level=level))
     if mole.nao > SCOUT_SHARE * field.mol.nao:
         return None
-    small = mean_field(mole, level, point.solvent, SETTINGS["quick"])
+    small = mean_field(mole, level, point.solvent, SCOUT)
     small.callback = watch
     if point.solvent is not None:
         small.with_solvent.lebedev_order = SCOUT_SURFACE
@@ -176,7 +176,7 @@ def _other_methods(point: Point, field: Any) -> Iterator[tuple[str, Any]]:
         "ROKS": (Level("UKS", level.basis, functional), Level("ROHF", level.basis)),
     }
     for other in others[level.scf]:
-        rough = mean_field(field.mol, other, None, SETTINGS["quick"])
+        rough = mean_field(field.mol, other, None, SCOUT)
         rough.conv_tol, rough.max_cycle = 1e-6, 50
         try:
             rough.kernel()

@@ -23,16 +23,17 @@ class Settings:
     gradient_tolerance: float
     start_grid_level: int | None = None
     """Coarser grid on which the density is converged first; None for none."""
-    start_basis: str | None = None
-    """Small basis set in which the density is converged first of all; None for none."""
     max_iterations: int = 100
 
 
 SETTINGS = {
-    "quick": Settings("def2-universal-jkfit", 0, 1e-7, 3e-5, None, "pcseg-0"),
-    "standard": Settings("def2-universal-jkfit + free s, p", 1, 1e-9, 3e-6, 0, "pcseg-0"),
+    "quick": Settings("def2-universal-jkfit", 1, 1e-7, 3e-5, 0),
+    "standard": Settings("def2-universal-jkfit + free s, p", 1, 1e-9, 3e-6, 0),
     "reference": Settings(None, 4, 1e-10, 1e-6),
 }
+
+SCOUT = Settings("def2-universal-jkfit", 0, 1e-7, 1e-4)
+"""For looking around in a small basis: which states there are, not their couplings."""
 
 
 def settings(level: Level) -> Settings:
