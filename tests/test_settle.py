@@ -14,7 +14,7 @@ from unpaired.constants import BOHR_ANGSTROM
 from unpaired.electronic.hessian import analytic_hessian, difference_hessian, hessian_product
 from unpaired.electronic.relax import LOOSE, ROUGH_STEPS, relax
 from unpaired.electronic.surface import Surface
-from unpaired.errors import ConvergenceError
+from unpaired.errors import ConvergenceError, EngineError
 from unpaired.level import Level
 from unpaired.molecule import Molecule
 from unpaired.recipe.load import load_recipe
@@ -217,3 +217,16 @@ def test_a_recipe_with_a_drawing_goes_through_the_main_job(tmp_path: Path) -> No
     assert result.rows("couplings")[0]["a_iso_mT"] == pytest.approx(-309.21, rel=0.01)
     assert "from SMILES [He+]" in result.structure_note
     assert result.provenance["structure"]["story"]
+
+
+def test_a_structure_is_kept_when_its_curvature_cannot_be_computed(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def fail(*arguments: object) -> None:
+        raise EngineError("no second derivatives today")
+
+    monkeypatch.setattr("unpaired.settle.curvature_of", fail)
+    settled = settle(recipe(tmp_path, "[C]#N"))
+    assert settled.minimum is None
+    assert [flag.code for flag in settled.flags] == ["curvature-unknown"]
+    assert "curvature not checked: no second derivatives today" in settled.story

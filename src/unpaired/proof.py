@@ -125,6 +125,9 @@ def curvature_flags(lowest: Conformer) -> list[Flag]:
             "relax it (relax: true) or start from another structure"
         )
         return [Flag("saddle", "bad", advice, lowest.lowest_mode_cm, 0.0)]
+    if lowest.minimum is None and lowest.lowest_mode_cm is None:
+        advice = "the curvature could not be checked: look at the story in record.json"
+        return [Flag("curvature-unknown", "caution", advice)]
     if lowest.minimum is None:
         advice = (
             "the softest motion is so flat that the curvature proves nothing; couplings that depend on it "

@@ -20,6 +20,7 @@ from .point import Solvent
 from .proof import (
     ROUGH,
     ROUGH_BASIS,
+    Curvature,
     conformer_of,
     curvature_flags,
     curvature_of,
@@ -293,7 +294,10 @@ def _proven(work: _Work, end: Relaxed) -> tuple[Conformer, Floats | None]:
     started = time.perf_counter()
     if work.report is not None:
         work.report("curvature", 0, end.energy_Eh, end.gradient_max)
-    found = curvature_of(work.surface, end.coordinates_bohr)
+    try:
+        found = curvature_of(work.surface, end.coordinates_bohr)
+    except CalculationError as error:  # the structure is worth keeping without its proof
+        found = Curvature(None, None, None, None, f"curvature not checked: {error.message}")
     work.timed("curvature", started)
     work.story.append(found.story)
     return conformer_of(work.surface, end.coordinates_bohr, end.energy_Eh, found), found.displacement

@@ -7,6 +7,7 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
+from .boundary import library_errors
 from .surface import Surface
 
 Floats = NDArray[np.float64]
@@ -24,10 +25,11 @@ def analytic_hessian(surface: Surface, coordinates_bohr: Floats) -> Floats | Non
     if not surface.level.is_unrestricted:
         return None
     field = surface.converged(coordinates_bohr)
-    try:
-        hessian = field.Hessian().set(verbose=0).kernel()
-    except NotImplementedError:
-        return None
+    with library_errors(f"{surface.level.id}, second derivatives"):
+        try:
+            hessian = field.Hessian().set(verbose=0).kernel()
+        except NotImplementedError:
+            return None
     size = 3 * len(coordinates_bohr)
     return np.asarray(hessian.transpose(0, 2, 1, 3).reshape(size, size))
 
