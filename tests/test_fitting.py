@@ -71,3 +71,16 @@ def test_a_moved_atom_gets_its_own_integrals(mole):
     second = fitting.Fitting(moved, SET).build()
     np.testing.assert_array_equal(second._cderi, df.DF(moved, SET).build()._cderi)
     assert not np.allclose(first._cderi, second._cderi)
+
+
+def test_a_scout_in_another_basis_does_not_push_out_the_integrals(mole):
+    small = gto.M(atom=mole.atom, unit="Bohr", basis="sto-3g", spin=1, verbose=0)
+    first = fitting.Fitting(mole, SET).build()
+    fitting.Fitting(small, SET).build()
+    assert fitting.Fitting(mole.copy(), SET).build()._cderi is first._cderi
+
+
+def test_only_the_latest_integrals_are_kept(mole):
+    for basis in ("sto-3g", "3-21g", "6-31g"):
+        fitting.Fitting(gto.M(atom=mole.atom, unit="Bohr", basis=basis, spin=1, verbose=0), SET).build()
+    assert len(fitting._kept) == fitting.KEPT

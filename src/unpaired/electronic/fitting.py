@@ -24,8 +24,11 @@ BATCH_MB = 96.0
 BUFFER_MB = 150.0
 """Memory beside the integrals while they are made."""
 
-_last: tuple[str, Any, Array] | None = None
-"""Key, auxiliary molecule and integrals of the molecule seen last in this process."""
+KEPT = 2
+"""Sets of integrals kept: those of the basis and those of the small one in which states are scouted."""
+
+_kept: dict[str, tuple[Any, Array]] = {}
+"""Auxiliary molecule and integrals used last in this process, latest at the end."""
 
 
 class Fitting(df.DF):  # type: ignore[misc]
@@ -33,17 +36,17 @@ class Fitting(df.DF):  # type: ignore[misc]
 
     def build(self) -> Fitting:
         """Three-index integrals, taken over from the previous level if it had the same molecule and sets."""
-        global _last
         key = _key(self.mol, self.auxbasis)
-        if _last is not None and _last[0] == key:
-            self.auxmol, self._cderi = _last[1], _last[2]
+        if key in _kept:
+            self.auxmol, self._cderi = _kept[key] = _kept.pop(key)
             return self
-        _last = None
+        while len(_kept) >= KEPT:  # before new ones are made, so that they never stand side by side
+            del _kept[next(iter(_kept))]
         self.auxmol = df.addons.make_auxmol(self.mol, self.auxbasis)
         words = self.auxmol.nao * (self.auxmol.nao + self.mol.nao * (self.mol.nao + 1) // 2)
         memory_MB = words * 8 / 0.98e6 + BUFFER_MB  # the library takes what it is given for its buffers
         self._cderi = df.incore.cholesky_eri(self.mol, auxmol=self.auxmol, max_memory=memory_MB)
-        _last = (key, self.auxmol, self._cderi)
+        _kept[key] = self.auxmol, self._cderi
         return self
 
     def get_jk(
@@ -90,8 +93,7 @@ class Fitting(df.DF):  # type: ignore[misc]
 
 def release() -> None:
     """Forgets the integrals kept for the next level."""
-    global _last
-    _last = None
+    _kept.clear()
 
 
 def _key(mol: Any, auxbasis: Any) -> str:
