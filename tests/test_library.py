@@ -29,6 +29,7 @@ RADICALS = (
     "fluoromethyl",
     "formaldehyde-cation",
     "formyl",
+    "hydrazine-cation",
     "nitrogen-dioxide",
     "vinyl",
 )
@@ -38,6 +39,8 @@ MISSES = {
     ("difluoride-anion", "F1"): "self-interaction error: the hole of a three-electron bond is too diffuse",
     ("fluoromethyl", "C1"): NO_INVERSION,
     ("fluoromethyl", "H3"): NO_INVERSION,
+    ("hydrazine-cation", "H3"): NO_INVERSION,
+    ("hydrazine-cation", "N1"): NO_INVERSION,
     ("vinyl", "H3"): NO_INVERSION,
     ("vinyl", "H5"): NO_INVERSION,
     ("vinyl", "C2"): "a small difference of direct and polarisation parts",
