@@ -25,7 +25,7 @@ diagnostics ensemble
 proof
 settle
 result
-origin analysis
+origin solutions analysis
 store
 execute
 study

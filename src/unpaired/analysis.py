@@ -12,7 +12,7 @@ from typing import Any
 
 import numpy as np
 
-from . import diagnostics
+from . import diagnostics, solutions
 from .constants import contact_coupling_MHz, mT_from_MHz
 from .flag import Flag
 from .molecule import Molecule
@@ -39,14 +39,17 @@ def analyse(point: Point, state: State, groups: Sequence[Group], isotopes: Seque
     part = Part(
         tables={
             "couplings": atom_rows(point.molecule, groups, isotopes),
-            "states": [state_row(point, state)],
+            "states": [state_row(point, state) | solutions.state_columns(state)],
+            "solutions": solutions.solution_rows(point, state, isotopes),
         },
         flags=[],
         details={"story": list(state.story), "engine": dict(state.engine)},
     )
     add_couplings(part, point, state, groups)
     add_origin(part, spin_origin(point, state, groups, isotopes))
+    part.flags += solutions.state_flags(point, state)
     part.flags += diagnostics.contamination_flags(state, point)
+    part.flags += solutions.projection_flags(point, part.tables["couplings"])
     part.flags += diagnostics.exaggeration_flags(point)
     part.flags += diagnostics.restricted_flags(point)
     part.flags += diagnostics.high_spin_flags(point)
@@ -61,7 +64,7 @@ def analyse(point: Point, state: State, groups: Sequence[Group], isotopes: Seque
 
 def across_levels(points: Sequence[Point], outcomes: Sequence[State | Failure]) -> list[Flag]:
     """Flags that only a comparison of the levels of one radical can raise."""
-    return []
+    return solutions.disagreement_flags(points, outcomes)
 
 
 def atom_rows(

@@ -54,7 +54,6 @@ class Outcome:
 def search(point: Point, field: Any, start: str, watch: Watch) -> Outcome:
     """Solutions of `field`, the point's mean field. Raises ConvergenceError if no start leads to one."""
     spin = point.molecule.spin
-    exact = spin * (spin + 1)
     thorough = len(point.molecule.elements) <= SMALL_ATOMS or point.level.solution is not None
     own = Explorer(field)
     scout = _scout(point, field, watch)
@@ -69,12 +68,12 @@ def search(point: Point, field: Any, start: str, watch: Watch) -> Outcome:
     if not first.found:
         look_around()
     else:
-        suspicions = first.suspicions(rungs, point.level.scf, exact)
+        suspicions = first.suspicions(rungs, point.level.scf, spin)
         if suspicions or (thorough and field.mol.natm > 1 and field.mol.nelectron > 1):
             look_around()
     if scout is not None:
         own_rungs = _carry(scout, own, wide=point.level.solution is not None)
-        more = own.suspicions(own_rungs, point.level.scf, exact) if own.found else ("not converged",)
+        more = own.suspicions(own_rungs, point.level.scf, spin) if own.found else ("not converged",)
         if scout.starts == 1 and more:
             suspicions = tuple(dict.fromkeys((*suspicions, *more)))
             look_around()
@@ -131,9 +130,6 @@ def _carry(scout: Explorer, own: Explorer, wide: bool) -> tuple[str, ...]:
         own.carried.append(one)
         orbitals, occupations = _projected(scout, own, one)
         trust = _trust(scout, own, one)
-        if one.stable is False and one is not lowest:
-            own.from_orbitals(orbitals, occupations, one.origin, trust)
-            continue
         used = own.from_density(own.field.make_rdm1(orbitals, occupations), one.origin, trust)
         if one is lowest:
             rungs = used

@@ -181,13 +181,14 @@ class Explorer:
             degenerate=degeneracy(field.mol, orbitals, occupations),
         )
 
-    def suspicions(self, rungs: tuple[str, ...], method: str, exact: float) -> tuple[str, ...]:
+    def suspicions(self, rungs: tuple[str, ...], method: str, spin: float) -> tuple[str, ...]:
         """Why the solutions found so far should not be the last word."""
         lowest = self.lowest
         reasons = []
         if any(found.stable is False for found in self.found):
             reasons.append("unstable")
-        if lowest.s_squared - exact > CONTAMINATED.get(method, np.inf):
+        scale = (2 * spin + 2) / 3  # the weight of the next spin is about D/(2S+2)
+        if lowest.s_squared - spin * (spin + 1) > CONTAMINATED.get(method, np.inf) * scale:
             reasons.append("contaminated")
         if lowest.verdict.lowest_Eh is not None and lowest.verdict.lowest_Eh < NEARLY_DEGENERATE_Eh:
             reasons.append("nearly degenerate")
