@@ -30,7 +30,7 @@ from .proof import (
 from .recipe.levels import DEFAULT_RELAX
 from .recipe.recipe import Recipe
 from .settled import WINDOW_KJ_MOL, Conformer, Settled, relative_kJ_mol, weigh
-from .structures.conformers import SAME_Eh, alike_atoms, same_shape, starts
+from .structures.conformers import SAME_ANGSTROM, SAME_Eh, alike_atoms, same_shape, starts
 from .structures.smiles import Drawing, read_smiles
 from .structures.symmetry import symmetrised
 
@@ -42,6 +42,8 @@ ROUNDS = 4
 """How often a negative mode is followed."""
 DOWNHILL_ANGSTROM = (0.15, 0.3)
 """Largest displacement of an atom along a negative mode."""
+SOFT_Eh, SOFT_ANGSTROM = 5e-6, 0.15
+"""Structures that differ by less in energy and in every distance are one minimum with a soft motion."""
 SYMMETRY_COST_Eh = 2e-6
 """Energy by which the symmetrised structure may lie higher than the relaxed one."""
 
@@ -170,7 +172,7 @@ def _distinct(
     elements: Sequence[str], found: Sequence[tuple[float, Floats]], window_kJ_mol: float, loose: bool
 ) -> list[tuple[float, Floats]]:
     """The lowest of every shape within the window, by energy."""
-    energy_tolerance, shape_tolerance = (1e-3, 0.15) if loose else (SAME_Eh, 0.03)
+    energy_tolerance, shape_tolerance = (1e-3, 0.15) if loose else (SAME_Eh, SAME_ANGSTROM)
     kept: list[tuple[float, Floats]] = []
     for energy, coordinates in sorted(found, key=lambda pair: pair[0]):
         if (energy - kept[0][0] if kept else 0.0) * HARTREE_KJ_MOL > window_kJ_mol:
@@ -236,11 +238,13 @@ def _in_words(conformer: Conformer) -> str:
 
 
 def _known(work: _Work, one: Relaxed | Conformer, found: Sequence[Conformer]) -> bool:
-    coordinates = one.coordinates_bohr if isinstance(one, Relaxed) else one.molecule.coordinates_bohr
+    """True if a structure is one of those found already; a soft motion may leave it a little elsewhere."""
+    angstrom = one.coordinates_bohr * BOHR_ANGSTROM
     return any(
-        abs(one.energy_Eh - other.energy_Eh) < SAME_Eh
-        and same_shape(work.elements, coordinates * BOHR_ANGSTROM, other.molecule.coordinates_angstrom)
+        abs(one.energy_Eh - other.energy_Eh) < energy
+        and same_shape(work.elements, angstrom, other.molecule.coordinates_angstrom, shape)
         for other in found
+        for energy, shape in ((SAME_Eh, SAME_ANGSTROM), (SOFT_Eh, SOFT_ANGSTROM))
     )
 
 

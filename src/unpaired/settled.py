@@ -6,6 +6,9 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+import numpy as np
+from numpy.typing import NDArray
+
 from .constants import BOLTZMANN_EH_K, HARTREE_KJ_MOL
 from .flag import Flag
 from .molecule import Molecule
@@ -29,6 +32,11 @@ class Conformer:
     """Harmonic zero-point energy; None without a full Hessian at the level of the relaxation."""
     order: int
     """Number of symmetry operations. A structure with fewer exists in more equal copies."""
+
+    @property
+    def coordinates_bohr(self) -> NDArray[np.float64]:
+        """Shape (atoms, 3)."""
+        return self.molecule.coordinates_bohr
 
 
 @dataclass(frozen=True, eq=False)
