@@ -163,13 +163,25 @@ def test_a_range_that_misses_every_line_says_where_they_are() -> None:
         draw(some_lines(), Width(0.1), Shape(0.1), 1.0, (100.0, 120.0))
 
 
+@pytest.mark.parametrize("points", [1, 0, 10**9])
+def test_a_number_of_points_that_cannot_be_is_refused(points: int) -> None:
+    with pytest.raises(InputError, match=f"a curve has 2 to 2000000 points, found {points}"):
+        draw(some_lines(), Width(0.1), Shape(0.1), 1.0, points=points)
+
+
+def test_a_negative_seed_is_refused() -> None:
+    curve = draw(some_lines(), Width(0.1), Shape(0.1), 1.0)
+    with pytest.raises(InputError, match="the seed of the noise cannot be negative, found -1"):
+        with_noise(curve, 0.1, seed=-1)
+
+
 def test_a_falling_range_is_refused() -> None:
     with pytest.raises(InputError, match="the range must rise"):
         draw(some_lines(), Width(0.1), Shape(0.1), 1.0, (350.0, 330.0))
 
 
 def test_a_curve_too_long_for_memory_is_refused() -> None:
-    with pytest.raises(InputError, match="narrow the range or widen the lines"):
+    with pytest.raises(InputError, match="needs more than 2000000 points; narrow the range"):
         draw(some_lines(), Width(1e-7), Shape(1e-7), 1.0)
 
 

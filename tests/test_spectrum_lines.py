@@ -165,6 +165,12 @@ def test_the_order_is_chosen_from_the_shift_against_the_width(
     assert "a*a/(2 B0)" in note
 
 
+def test_what_second_order_leaves_out_is_said_where_it_could_be_seen() -> None:
+    small, large = (lines_of(system(("19F", 11, a)), width_mT=0.1) for a in (1.0, 20.0))
+    assert "leaves out" not in small.notes[0]
+    assert "what it leaves out is of the size of 0.0" in large.notes[0]
+
+
 def test_exact_is_refused_beyond_1024_states() -> None:
     with pytest.raises(InputError, match="at most 1024 nuclear states, here are 2048"):
         lines_of(system(("1H", 11, -2.3)), "exact")

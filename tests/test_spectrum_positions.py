@@ -11,7 +11,13 @@ from spin_samples import splitting
 
 from unpaired.constants import BOHR_MAGNETON_MHZ_T, ELECTRON_G, NUCLEAR_MAGNETON_MHZ_T
 from unpaired.spectrum.exact import exact_lines
-from unpaired.spectrum.orders import close_pairs, first_order, second_order, second_order_size_mT
+from unpaired.spectrum.orders import (
+    close_pairs,
+    first_order,
+    second_order,
+    second_order_size_mT,
+    third_order_size_mT,
+)
 from unpaired.spectrum.splitting import Splitting, Sweep
 
 X_BAND = Sweep(ELECTRON_G, frequency_MHz=9500.0)
@@ -102,6 +108,15 @@ def test_second_order_of_several_groups_misses_the_exact_lines_by_third_order_on
     assert set(map(tuple, labels.tolist())) == {
         (a, b, c) for a in (-3, -1, 1, 3) for b in (-1, 1) for c in (-4, -2, 0, 2, 4)
     }
+
+
+def test_second_order_misses_one_nucleus_by_the_third_order_term() -> None:
+    one = splitting("13C", 1, 600.0)
+    exact, _, labels = exact_lines([one], X_BAND)
+    near = X_BAND.centre + second_order(one, X_BAND)[0]
+    missed = np.abs(exact[np.argsort(labels[:, 0])] - near)
+    # m = 1/2; the rest is the nuclear Zeeman energy, a sixth of a/2 here, and the next order, a/B0 of it.
+    assert missed == pytest.approx([third_order_size_mT([one], X_BAND)] * 2, rel=0.25)
 
 
 def test_orders_agree_for_a_vanishing_coupling() -> None:

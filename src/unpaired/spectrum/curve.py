@@ -67,15 +67,16 @@ def draw(
     parts = _by_width(lines, width, axis_per_mT)
     narrowest = min(part_width for part_width, _ in parts)
     first, last = _range(lines, max(part_width for part_width, _ in parts), limits)
-    number = points or max(LEAST_POINTS, math.ceil((last - first) / narrowest * POINTS_PER_WIDTH) + 1)
-    if number < 2:
-        raise InputError(f"a curve needs at least 2 points, found {number}")
+    if points is not None and not 2 <= points <= MOST_POINTS:
+        raise InputError(f"a curve has 2 to {MOST_POINTS} points, found {points}")
+    resolving = max(LEAST_POINTS, math.ceil((last - first) / narrowest * POINTS_PER_WIDTH) + 1)
+    number = resolving if points is None else points
     step = (last - first) / (number - 1)
     finer = max(1, math.ceil(step / narrowest * POINTS_PER_WIDTH))
     if (number - 1) * finer + 1 > MOST_POINTS:
         raise InputError(
-            f"a width of {narrowest:g} over a range of {last - first:g} {lines.axis} needs more than "
-            f"{MOST_POINTS} points; narrow the range or widen the lines"
+            f"a width of {narrowest:g} over a range of {last - first:g} needs more than {MOST_POINTS} points; "
+            "narrow the range or widen the lines"
         )
     signal = np.zeros((number - 1) * finer + 1)
     for part_width, chosen in parts:
@@ -90,6 +91,8 @@ def with_noise(curve: Curve, share: float, seed: int) -> Curve:
     """The curve with normal noise, its standard deviation a share of the largest signal."""
     if not (math.isfinite(share) and share >= 0):
         raise InputError(f"the noise cannot be negative, found {share:g}")
+    if seed < 0:
+        raise InputError(f"the seed of the noise cannot be negative, found {seed}")
     noise = np.random.default_rng(seed).normal(size=len(curve.signal))
     return replace(curve, signal=curve.signal + share * np.abs(curve.signal).max() * noise)
 

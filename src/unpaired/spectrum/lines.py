@@ -15,7 +15,7 @@ from ..errors import InputError, require_choice
 from ..nuclei import isotope
 from ..spinsystem import SpinSystem
 from .exact import exact_lines
-from .orders import close_pairs, first_order, second_order, second_order_size_mT
+from .orders import close_pairs, first_order, second_order, second_order_size_mT, third_order_size_mT
 from .splitting import Splitting, Sweep
 
 ORDERS = ("auto", "exact", "second", "first")
@@ -205,6 +205,11 @@ def _of_one(system: SpinSystem, sweep: Sweep, width_mT: float, order: str) -> Li
                 "close that second order mixes them; their fine structure is approximate (order exact has it)"
             )
     position, intensity, twice_m = _positions(joined, sweep, width_mT, taken)
+    if position.min() <= 0:
+        raise InputError(
+            f"{system.name}: the couplings are too large for {_WORDS[taken]} here (it puts lines below zero); take a "
+            "higher frequency or field, or order exact"
+        )
     if twice_m is None:
         notes.append(f"{system.name}: too many lines to name; close ones are joined and m_I is left empty")
         labels = None
@@ -240,13 +245,20 @@ def _choice(splittings: Sequence[Splitting], sweep: Sweep, width_mT: float, orde
         return "second", f"line positions of second order: {compared}, exact ones would look the same"
     if states <= EXACT_STATES:
         return "exact", f"exact line positions by diagonalisation: {compared}, {states} nuclear states"
-    return (
-        "second",
-        f"line positions of second order: {compared}, {states} nuclear states are too many for exact",
+    reason = (
+        f"line positions of second order: {compared}, {_number(states)} nuclear states are too many for exact"
     )
+    left_out = third_order_size_mT(splittings, sweep)
+    if left_out > NEGLIGIBLE_SHARE_OF_WIDTH * width_mT:
+        reason += f"; what it leaves out is of the size of {left_out:.2g} mT"
+    return "second", reason
 
 
 _WORDS = {"exact": "exact diagonalisation", "second": "second order", "first": "first order"}
+
+
+def _number(states: int) -> str:
+    return str(states) if states < 10**9 else f"about 10^{len(str(states)) - 1}"
 
 
 def _joined_equals(

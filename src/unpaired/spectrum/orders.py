@@ -63,6 +63,18 @@ def second_order_size_mT(splittings: Sequence[Splitting], sweep: Sweep) -> float
     return float((largest / sweep.electron_MHz_per_mT) ** 2 / (2 * sweep.centre_mT))
 
 
+def third_order_size_mT(splittings: Sequence[Splitting], sweep: Sweep) -> float:
+    """Largest |a^3 m / (4 B0^2)| of a group, in mT: the size of what second order leaves out.
+
+    The two flips from m reach levels h nu + a/2 and h nu - a/2 away, not h nu: expanding the difference gives
+    this term (one nucleus: the next term of the Breit-Rabi formula, apart from the nuclear Zeeman energy).
+    """
+    sizes = (
+        abs(s.coupling_MHz / sweep.electron_MHz_per_mT) ** 3 * s.count * s.twice_spin / 2 for s in splittings
+    )
+    return float(max(sizes, default=0.0) / (4 * sweep.centre_mT**2))
+
+
 def close_pairs(splittings: Sequence[Splitting], sweep: Sweep) -> list[tuple[int, int]]:
     """Pairs of groups too close for second order: |a_k - a_l| < 10 a_k a_l / (2 nu), and not equal."""
     resonance_MHz = sweep.centre_mT * sweep.electron_MHz_per_mT
