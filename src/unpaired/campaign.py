@@ -10,7 +10,7 @@ from typing import Protocol
 
 from . import machine
 from .errors import CalculationError, InputError, StoreError
-from .execute import ADVICE, Here, Outcome, Pool, Solve, StoredSolve, Submitter, attempt, run_points
+from .execute import ADVICE, Here, Outcome, Pool, Solve, StoredSolve, Submitter, attempt, failure, run_points
 from .files import require_writable
 from .forecast import require_memory
 from .point import Point
@@ -58,8 +58,8 @@ class Campaign:
         except StoreError as error:
             raise InputError(error.message) from None
         self.plans = [plan(recipe) for recipe in self.recipes]
-        require_memory(self.plans)
         self.store = Store(out, identity, say=_say)
+        require_memory(self.plans, finished=self.store.has)
         self.solve = StoredSolve(solve or _engine, self.store)
         self.executor = executor
 
@@ -69,7 +69,7 @@ class Campaign:
         On KeyboardInterrupt the finished levels are written and the interrupt goes on.
         """
         failures: list[str] = []
-        plans = self._settled(failures)
+        plans = self._settled(failures, print_result)
         places = [
             (which, place) for which, planned in enumerate(plans) for place in range(len(planned.every_point))
         ]
@@ -92,15 +92,17 @@ class Campaign:
             raise
         return "\n".join(failures)
 
-    def _settled(self, failures: list[str]) -> list[Plan]:
-        """Plans at settled structures; a recipe whose structure cannot be settled becomes a sentence."""
+    def _settled(self, failures: list[str], print_result: Callable[[str], None]) -> list[Plan]:
+        """Plans at settled structures; where one cannot be settled, every level is a row with the reason."""
         plans = []
         for before in self.plans:
             recipe = before.recipe
             try:
                 plans.append(plan(recipe, settle(recipe, self._walking(recipe.radical), self.store.folder)))
             except CalculationError as error:
-                failures.append(f"{recipe.radical}: {error.message}")
+                reason = failure(error)
+                found: dict[int, Outcome] = dict.fromkeys(range(len(before.every_point)), reason)
+                failures += self._finish(before, found, print_result)
         return plans
 
     def _walking(self, radical: str) -> Callable[[str, int, float, float], None]:

@@ -50,11 +50,15 @@ class Store:
         """Folder of the point's entry, whether it is there or not."""
         return self.folder / self.key(point)
 
+    def has(self, point: Point) -> bool:
+        """True if there is an entry, whole or damaged."""
+        return self.place(point).is_dir()
+
     def load(self, point: Point) -> State | None:
         """The stored state, or None. A damaged entry is set aside and counts as None."""
-        place = self.place(point)
-        if not place.is_dir():
+        if not self.has(point):
             return None
+        place = self.place(point)
         try:
             return decode((place / "state.json").read_bytes(), (place / "arrays.npz").read_bytes())
         except (OSError, ValueError, KeyError, TypeError) as error:
