@@ -31,7 +31,8 @@ def field_gradients(point: Point, spin_density_matrix: Array) -> Array:
     for atom in range(mole.natm):
         with mole.with_rinv_at_nucleus(atom):
             twice = mole.intor("int1e_ipiprinv", comp=9).reshape(9, -1) @ flat
-            once = mole.intor("int1e_iprinvip", comp=9).reshape(9, -1) @ flat
+            # Half of the pairs suffice: exchanging m and n exchanges i and j, which is symmetrised below.
+            once = mole.intor("int1e_iprinvip", comp=9, hermi=1).reshape(9, -1) @ flat
         found[atom] = 2 * (twice + once).reshape(3, 3)
     found = (found + found.transpose(0, 2, 1)) / 2
     trace = np.trace(found, axis1=1, axis2=2)
