@@ -81,7 +81,10 @@ def full_report(result: Result) -> str:
     )
     head = f"{result.radical}   charge {recipe['charge']:+d}   2S+1 = {recipe['multiplicity']}   {medium}\n"
     averaged = any(row.get("a_averaged_mT") is not None for row in result.rows("couplings"))
-    over = " and thermal mean over the conformers of conformers.csv" if averaged else ""
+    over = ""
+    if averaged:
+        source = "assumed, the recipe names none" if recipe["temperature_assumed"] else "from the recipe"
+        over = f",\nand over the conformers of conformers.csv at {recipe['temperature_K']:g} K ({source})"
     parts = [
         head.replace("+0", "0"),
         f"couplings in mT (MHz), mean of each group of equivalent nuclei{over}",
