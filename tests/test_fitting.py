@@ -84,3 +84,14 @@ def test_only_the_latest_integrals_are_kept(mole):
     for basis in ("sto-3g", "3-21g", "6-31g"):
         fitting.Fitting(gto.M(atom=mole.atom, unit="Bohr", basis=basis, spin=1, verbose=0), SET).build()
     assert len(fitting._kept) == fitting.KEPT
+
+
+def test_part_of_the_coulomb_operator_for_range_separated_functionals(mole):
+    dm = np.random.default_rng(8).normal(size=(2, mole.nao, mole.nao))
+    dm = dm + dm.swapaxes(1, 2)
+    ours, theirs = fitting.Fitting(mole, SET), df.DF(mole, SET)
+    whole = ours.get_jk(dm)
+    for omega in (0.33, -0.33):
+        for mine, expected in zip(ours.get_jk(dm, omega=omega), theirs.get_jk(dm, omega=omega), strict=True):
+            np.testing.assert_allclose(mine, expected, atol=1e-9)
+    np.testing.assert_array_equal(ours.get_jk(dm)[1], whole[1])

@@ -43,8 +43,11 @@ THREADS_GAIN = 0.8
 """Exponent of the gain from a faster machine: some work does not run in threads."""
 ITERATIONS = 10
 COARSE_ITERATIONS = 8
-SEARCH = 1.25
+SEARCH = 1.3
 """For starts and stability tests beside the one calculation."""
+
+SEARCH_MEMORY = 1.15
+"""For what other starts and stability tests keep beside it."""
 
 
 class Cost(NamedTuple):
@@ -103,7 +106,7 @@ def _memory_MB(size: Sizes, setting: Settings) -> float:
     from .meanfield import EXACT_INTEGRALS_MB
 
     square = size.functions**2 * 8 / MB
-    total = PROCESS_MB + 45 * square
+    total = 45 * square
     if size.fitting:
         integrals = size.fitting * square / 2 + size.fitting**2 * 8 / MB
         batch = min(BATCH_MB, size.fitting * square)
@@ -114,7 +117,7 @@ def _memory_MB(size: Sizes, setting: Settings) -> float:
     for points in (size.points, size.coarse_points):
         values = points * size.functions * size.share * 4 * 8 / MB
         total += min(values, KEPT_MB) + points * 60 * 8 / MB
-    return total
+    return PROCESS_MB + SEARCH_MEMORY * total
 
 
 def _seconds(size: Sizes, setting: Settings) -> float:

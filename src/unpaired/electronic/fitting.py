@@ -54,9 +54,13 @@ class Fitting(df.DF):  # type: ignore[misc]
         direct_scf_tol: float = 1e-13, omega: float | None = None,
     ) -> tuple[Any, Any]:  # fmt: skip
         """Coulomb and exchange matrices of real symmetric density matrices; others go to the library."""
+        if omega is not None:
+            with self.range_coulomb(omega) as part:
+                answer: tuple[Any, Any] = part.get_jk(dm, hermi, with_j, with_k, direct_scf_tol)
+            return answer
         if self._cderi is None:
             self.build()
-        if omega is not None or hermi != 1 or np.iscomplexobj(dm):
+        if hermi != 1 or np.iscomplexobj(dm):
             return super().get_jk(dm, hermi, with_j, with_k, direct_scf_tol, omega)  # type: ignore[no-any-return]
         shape = np.shape(dm)
         matrices = np.asarray(dm).reshape(-1, *shape[-2:])
