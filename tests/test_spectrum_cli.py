@@ -61,6 +61,13 @@ def test_the_line_list_goes_to_standard_output(unpaired: Run, methyl: Path) -> N
     assert "6 lines (4 combinations of m_I) from 335." in err
 
 
+def test_lines_need_no_curve(unpaired: Run, tmp_path: Path) -> None:
+    atom = saved(tmp_path / "atom", record([("1H", 1, 50.0)]))
+    status, out, _ = unpaired("spectrum", atom, "--peak-to-peak-width-mT", "0.00001")
+    assert status == 0
+    assert len(rows(out)) == 2
+
+
 def test_lines_curve_and_plots_are_written(unpaired: Run, methyl: Path, tmp_path: Path) -> None:
     wanted = [tmp_path / f"curve{ending}" for ending in (".csv", ".svg", ".png")]
     outputs = [word for path in wanted for word in ("--output", path)]

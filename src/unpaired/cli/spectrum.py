@@ -135,24 +135,28 @@ def spectrum(
         SIGNALS.index(signal),
         modulation_mT * sweep.axis_per_mT,
     )
-    curve = draw(listed, width, drawn_shape, sweep.axis_per_mT, range_ or (None, None), points)
-    notes += _line_notes(listed, curve, noise, seed)
-    if noise:
-        curve = with_noise(curve, noise, seed)
+    notes += _line_notes(listed)
     fit = None
-    if measured is not None:
-        read = read_measured_curve(measured)
-        fit = overlay(curve, read)
-        notes += _fit_notes(measured, read, fit)
+    # The lines alone need no curve: they may be too far apart for any grid.
+    if output or measured or range_ or points is not None or width_terms or noise or modulation_mT:
+        curve = draw(listed, width, drawn_shape, sweep.axis_per_mT, range_ or (None, None), points)
+        notes += _curve_notes(curve, noise, seed)
+        if noise:
+            curve = with_noise(curve, noise, seed)
+        if measured is not None:
+            read = read_measured_curve(measured)
+            fit = overlay(curve, read)
+            notes += _fit_notes(measured, read, fit)
+        for path in output or []:
+            plot = path.suffix.lower() != ".csv"
+            if plot:
+                write_atomically(path, _plot(path, listed, curve, sweep, peak_to_peak_width_mT, fit))
+            else:
+                write_atomically(path, overlay_csv(fit) if fit else curve_csv(curve))
+            notes.append(f"{'plot' if plot else 'curve'} written to {path}")
     if lines is not None:
         write_atomically(lines, lines_csv(listed))
         notes.append(f"line list written to {lines}")
-    for path in output or []:
-        if path.suffix.lower() == ".csv":
-            write_atomically(path, overlay_csv(fit) if fit else curve_csv(curve))
-        else:
-            write_atomically(path, _plot(path, listed, curve, sweep, peak_to_peak_width_mT, fit))
-        notes.append(f"{'plot' if path.suffix.lower() != '.csv' else 'curve'} written to {path}")
     to_screen = lines is None and not output
     print("\n".join(notes), file=sys.stderr if to_screen else sys.stdout)
     if to_screen:
@@ -212,15 +216,18 @@ def _parts(
     return parts, notes
 
 
-def _line_notes(lines: Lines, curve: Curve, noise: float, seed: int) -> list[str]:
+def _line_notes(lines: Lines) -> list[str]:
     unit = lines.axis.rpartition("_")[2]
-    notes = list(lines.notes)
     kinds = lines.combinations
     named = f" ({kinds} combinations of m_I)" if kinds is not None and kinds < len(lines) else ""
-    notes.append(
-        f"{len(lines)} lines{named} from {lines.position[0]:.4f} to {lines.position[-1]:.4f} {unit}; curve of "
-        f"{len(curve.position)} points from {curve.position[0]:.4f} to {curve.position[-1]:.4f} {unit}"
-    )
+    span = f"from {lines.position[0]:.4f} to {lines.position[-1]:.4f} {unit}"
+    return [*lines.notes, f"{len(lines)} line{'s' if len(lines) > 1 else ''}{named} {span}"]
+
+
+def _curve_notes(curve: Curve, noise: float, seed: int) -> list[str]:
+    unit = curve.axis.rpartition("_")[2]
+    span = f"from {curve.position[0]:.4f} to {curve.position[-1]:.4f} {unit}"
+    notes = [f"curve of {len(curve.position)} points {span}"]
     if noise:
         notes.append(f"noise of {noise:g} of the largest signal, seed {seed}")
     return notes
