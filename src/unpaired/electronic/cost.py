@@ -28,8 +28,8 @@ SECONDS_PER_EXACT_INTEGRAL = 1.1e-7
 SECONDS_PER_KEPT_INTEGRAL = 6.0e-9
 """Of exact integrals kept in memory, per iteration."""
 EXCHANGE_RATE = 18e9
-DIAGONAL_SECONDS = 1.2e-8
-"""Per cube of the number of functions and iteration: diagonalisation of both spins, extrapolation."""
+MATRIX_SECONDS = 2.0e-6
+"""Per square of the number of functions and iteration: extrapolation, diagonalisation, gradient."""
 VALUE_SECONDS = 5.0e-9
 """Per function value and its derivatives, once."""
 SCALE_SECONDS = 9.0e-9
@@ -133,7 +133,7 @@ def _seconds(size: Sizes, setting: Settings) -> float:
         fits = n**4 < (0.95 * EXACT_INTEGRALS_MB - PROCESS_MB) * MB
         once = SECONDS_PER_EXACT_INTEGRAL * n**4 / 8
         seconds = once + iterations * SECONDS_PER_KEPT_INTEGRAL * n**4 / 8 if fits else iterations * once
-    seconds += iterations * DIAGONAL_SECONDS * n**3
+    seconds += iterations * MATRIX_SECONDS * n**2
     for points, passes in ((size.points, ITERATIONS), (size.coarse_points, COARSE_ITERATIONS)):
         values = points * n * size.share
         flops = values * (8 * size.electrons + 4 * n * size.share)

@@ -19,7 +19,7 @@ from .lowrank import factor
 
 Array = NDArray[np.float64]
 
-BATCH_MB = 96.0
+BATCH_MB = 24.0
 """Size of the unpacked three-index integrals worked on at once."""
 BUFFER_MB = 150.0
 """Memory beside the integrals while they are made."""
