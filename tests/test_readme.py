@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 
 from unpaired import columns
+from unpaired.errors import CalculationError
 
 ROOT = Path(__file__).parent.parent
 README = (ROOT / "README.md").read_text(encoding="utf-8")
@@ -17,6 +19,15 @@ def block(name: str) -> str:
 
 def test_the_table_of_columns_is_the_registry() -> None:
     assert block("columns") == columns.markdown()
+
+
+def test_every_finding_and_every_failure_is_explained() -> None:
+    source = "\n".join(path.read_text(encoding="utf-8") for path in (ROOT / "src").rglob("*.py"))
+    codes = set(re.findall(r'Flag\(\s*"([a-z-]+)"', source)) | set(
+        re.findall(r'Failure\("([a-z-]+)"', source)
+    )
+    codes |= {error.tag for error in (CalculationError, *CalculationError.__subclasses__())}
+    assert {code for code in codes if f"`{code}`" not in README} == set()
 
 
 def test_the_top_level_holds_only_what_it_should() -> None:

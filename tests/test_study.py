@@ -39,7 +39,9 @@ RECIPE = Recipe(
 )
 
 
-def engine(densities: tuple[float, ...] = (0.2, -0.1, -0.1, -0.1), s_squared: float = 0.755):
+def engine(
+    densities: tuple[float, ...] = (0.2, -0.1, -0.1, -0.1), s_squared: float = 0.755, degenerate: str = ""
+):
     """A solve whose spin density at the nuclei is what is asked: one singly occupied function per atom.
 
     Every basis function is one at its own nucleus, so alpha holds the positive and beta the negative parts.
@@ -63,7 +65,7 @@ def engine(densities: tuple[float, ...] = (0.2, -0.1, -0.1, -0.1), s_squared: fl
             orbital_energies_Eh=np.zeros((2, functions)),
         )
         ones = np.eye(functions)
-        return State((solution,), 0, ones, ones[:atoms], iterations=9, wall_s=0.5)
+        return State((solution,), 0, ones, ones[:atoms], 9, 0.5, engine={"degenerate": degenerate or None})
 
     return solve
 
@@ -162,6 +164,18 @@ def test_equivalent_nuclei_that_differ_are_flagged_and_others_not() -> None:
     found = codes(with_levels(Level("UHF", "pcH-1")), densities=(0.2, -0.08, -0.1, -0.12))
     assert {atom for code, atom, _ in found if code == "symmetry-broken"} == {"H2", "H3", "H4"}
     assert not any(code == "symmetry-broken" for code, _, _ in codes())
+
+
+def test_one_component_of_a_degenerate_state_is_no_broken_symmetry() -> None:
+    found = codes(
+        with_levels(Level("UHF", "pcH-1")), densities=(0.2, -0.08, -0.1, -0.12), degenerate="Jahn-Teller"
+    )
+    assert {(atom, severity) for code, atom, severity in found if code == "one-component"} == {
+        ("H2", "caution"),
+        ("H3", "caution"),
+        ("H4", "caution"),
+    }
+    assert not any(code == "symmetry-broken" for code, _, _ in found)
 
 
 def test_an_energy_basis_set_is_flagged_at_every_coupled_nucleus() -> None:

@@ -57,7 +57,7 @@ def analyse(point: Point, state: State, groups: Sequence[Group], isotopes: Seque
     part.flags += diagnostics.no_isotope_flags(point, isotopes)
     part.flags += diagnostics.contracted_basis_flags(point, isotopes)
     part.flags += diagnostics.broken_symmetry_flags(
-        point, groups, [row["a_iso_MHz"] for row in part.tables["couplings"]]
+        point, state, groups, [row["a_iso_MHz"] for row in part.tables["couplings"]]
     )
     return part
 

@@ -176,10 +176,25 @@ def high_spin_flags(point: Point) -> list[Flag]:
     ]
 
 
+BROKEN = (
+    "nuclei that the geometry makes equivalent differ (value and limit in mT): the wavefunction broke the "
+    "symmetry, its couplings are not those of the molecule"
+)
+ONE_COMPONENT = (
+    "one component of a degenerate state: single nuclei differ (value and limit in mT) and belong to this "
+    "component, the mean of the group is what a spectrum shows if the components interconvert"
+)
+
+
 def broken_symmetry_flags(
-    point: Point, groups: Sequence[Group], couplings_MHz: Sequence[float | None]
+    point: Point, state: State, groups: Sequence[Group], couplings_MHz: Sequence[float | None]
 ) -> list[Flag]:
-    """Nuclei that symmetry makes equivalent, but whose couplings differ."""
+    """Nuclei that symmetry makes equivalent, but whose couplings differ: bad, unless the state is degenerate.
+
+    One component of a degenerate state must look like this; the mean over the symmetric set is the same for
+    every component.
+    """
+    degenerate = bool(state.engine.get("degenerate"))
     flags = []
     for group in groups:
         values = [couplings_MHz[member] for member in group.members]
@@ -189,17 +204,16 @@ def broken_symmetry_flags(
         spread = float(np.ptp(field))
         limit = max(SYMMETRY_TOLERANCE_MT, SYMMETRY_TOLERANCE_SHARE * abs(float(field.mean())))
         if spread > limit:
-            for member in group.members:
-                flags.append(
-                    Flag(
-                        "symmetry-broken",
-                        "bad",
-                        "nuclei that the geometry makes equivalent differ (value and limit in mT): the "
-                        "wavefunction broke the symmetry, its couplings are not those of the molecule",
-                        spread,
-                        limit,
-                        point.level.id,
-                        point.molecule.labels[member],
-                    )
+            flags += [
+                Flag(
+                    "one-component" if degenerate else "symmetry-broken",
+                    "caution" if degenerate else "bad",
+                    ONE_COMPONENT if degenerate else BROKEN,
+                    spread,
+                    limit,
+                    point.level.id,
+                    point.molecule.labels[member],
                 )
+                for member in group.members
+            ]
     return flags
