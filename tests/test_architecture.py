@@ -21,7 +21,7 @@ recipe
 electronic
 properties
 motion
-diagnostics ensemble
+diagnostics basis_errors ensemble
 proof
 settle
 result

@@ -13,6 +13,7 @@ from typing import Any
 import numpy as np
 
 from . import diagnostics, solutions
+from .basis_errors import basis_error_flags
 from .constants import contact_coupling_MHz, mT_from_MHz
 from .flag import Flag
 from .molecule import Molecule
@@ -56,6 +57,7 @@ def analyse(point: Point, state: State, groups: Sequence[Group], isotopes: Seque
     part.flags += diagnostics.heavy_atom_flags(point)
     part.flags += diagnostics.no_isotope_flags(point, isotopes)
     part.flags += diagnostics.contracted_basis_flags(point, isotopes)
+    part.flags += basis_error_flags(point, isotopes)
     part.flags += diagnostics.broken_symmetry_flags(
         point, state, groups, [row["a_iso_MHz"] for row in part.tables["couplings"]]
     )
