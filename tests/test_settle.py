@@ -226,7 +226,10 @@ def test_a_structure_is_kept_when_its_curvature_cannot_be_computed(
         raise EngineError("no second derivatives today")
 
     monkeypatch.setattr("unpaired.settle.curvature_of", fail)
-    settled = settle(recipe(tmp_path, "[C]#N"))
+    (tmp_path / "h2.xyz").write_text("2\n\nH 0 0 0\nH 0 0 1.1\n")
+    path = tmp_path / "a.yaml"
+    path.write_text(f"radical: a\nstructure: h2.xyz\ncharge: 1\n{RELAX}")
+    settled = settle(load_recipe(path))
     assert settled.minimum is None
     assert [flag.code for flag in settled.flags] == ["curvature-unknown"]
     assert "curvature not checked: no second derivatives today" in settled.story
