@@ -28,13 +28,15 @@ Floats = NDArray[np.float64]
 Report = Callable[[str, int, float, float], None]
 """Called with (stage, step, energy_Eh, largest gradient component in Eh/bohr) after every step."""
 
-RELAXATION = Settings("def2-universal-jkfit", 2, 1e-9, 1e-5)
+RELAXATION = Settings("def2-universal-jkfit", 3, 1e-9, 1e-5)
 """Fitting, grid and thresholds of relaxations: a coarser grid makes the gradient rougher than the relaxation needs."""
 
 LOWER_Eh = 1e-6
 """By how much a second electronic state must be lower to be taken."""
 NEAR_BOHR = 0.6
 """The last density starts the next step if no nucleus has moved farther."""
+SURFACE_VERSION = 2
+"""Raised whenever energies or gradients change."""
 _ROUND = 8
 """Decimals of a bohr that tell two geometries apart."""
 
@@ -66,6 +68,7 @@ class Surface:
 
     def _key(self) -> str:
         question = {
+            "surface_version": SURFACE_VERSION,
             "elements": self.molecule.elements,
             "charge": self.molecule.charge,
             "multiplicity": self.molecule.multiplicity,
@@ -132,10 +135,19 @@ class Surface:
         return f"the electronic state was unstable; a lower one was found {before - best.e_tot:.5f} Eh below"
 
     def field(self, coordinates_bohr: Floats) -> Any:
-        """An unconverged mean-field object at these coordinates."""
+        """An unconverged mean-field object at these coordinates.
+
+        Its grid stands still in space: one that turns with the molecule jumps when two moments are nearly equal,
+        and a relaxation stumbles over steps of 1e-5 Eh (seen for CF3).
+        """
+        from pyscf import dft
+
         point = Point(self.molecule.moved(coordinates_bohr), self.level, self.solvent)
         field = mean_field(build_mole(point), self.level, self.solvent, self.settings)
         field.chkfile = None
+        if self.level.is_kohn_sham:
+            field.grids = dft.gen_grid.Grids(field.mol)
+            field.grids.level = self.settings.grid_level
         return field
 
     # --- what is kept on disk ----------------------------------------
