@@ -17,6 +17,7 @@ from unpaired.electronic.surface import Surface
 from unpaired.errors import ConvergenceError, EngineError
 from unpaired.level import Level
 from unpaired.molecule import Molecule
+from unpaired.proof import curvature_of
 from unpaired.recipe.load import load_recipe
 from unpaired.recipe.recipe import Recipe
 from unpaired.settle import prove, settle, unsettled
@@ -233,3 +234,13 @@ def test_a_structure_is_kept_when_its_curvature_cannot_be_computed(
     assert settled.minimum is None
     assert [flag.code for flag in settled.flags] == ["curvature-unknown"]
     assert "curvature not checked: no second derivatives today" in settled.story
+
+
+def test_one_electron_has_a_curvature_too() -> None:
+    """H2+ has one bond and one vibration; PySCF's analytic second derivatives fail on its empty spin."""
+    molecule = Molecule(("H", "H"), np.array([[0, 0, 0], [0, 0, 2.05]]), 1, 2)
+    surface = Surface(molecule, CHEAP)
+    assert analytic_hessian(surface, molecule.coordinates_bohr) is None
+    found = curvature_of(surface, molecule.coordinates_bohr)
+    assert found.minimum is True
+    assert "gradient differences" in found.story

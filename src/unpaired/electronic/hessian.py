@@ -25,6 +25,8 @@ def analytic_hessian(surface: Surface, coordinates_bohr: Floats) -> Floats | Non
     if not surface.level.is_unrestricted:
         return None
     field = surface.converged(coordinates_bohr)
+    if min(field.mol.nelec) == 0:  # PySCF's response fails on an empty spin
+        return None
     with library_errors(f"{surface.level.id}, second derivatives"):
         try:
             hessian = field.Hessian().set(verbose=0).kernel()
