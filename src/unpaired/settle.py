@@ -112,7 +112,7 @@ def prove(recipe: Recipe, report: Report | None = None, folder: Path | None = No
         f"({'stationary' if abs(gradient).max() < 1e-3 else 'not relaxed at this level'})"
     )
     conformer, _ = _proven(work, Relaxed(coordinates, energy, float(abs(gradient).max()), 1))
-    note = f"{recipe.radical}, positions from {recipe.structure}"
+    note = f"{unsettled(recipe).note}; at {work.level.id} {_in_words(conformer)}"
     return _settled(work, [conformer], note, None)
 
 
