@@ -16,7 +16,7 @@ from .auxiliary import auxiliary_size
 from .settings import Settings, settings
 
 MB = 1_000_000
-PROCESS_MB = 135.0
+PROCESS_MB = 150.0
 """Python with PySCF loaded."""
 SLOW_RATE = 34e9
 """Flop/s of matrix multiplication of the one core on which the seconds below were measured."""
@@ -48,6 +48,8 @@ SEARCH = 1.3
 
 SEARCH_MEMORY = 1.15
 """For what other starts and stability tests keep beside it."""
+SEARCH_MB = 80.0
+"""What a search for other states adds to a Hartree-Fock level: it tries Kohn-Sham states in a small basis."""
 
 
 class Cost(NamedTuple):
@@ -117,7 +119,7 @@ def _memory_MB(size: Sizes, setting: Settings) -> float:
     for points in (size.points, size.coarse_points):
         values = points * size.functions * size.share * 4 * 8 / MB
         total += min(values, KEPT_MB) + points * 60 * 8 / MB
-    return PROCESS_MB + SEARCH_MEMORY * total
+    return PROCESS_MB + SEARCH_MEMORY * total + (0 if size.points else SEARCH_MB)
 
 
 def _seconds(size: Sizes, setting: Settings) -> float:
