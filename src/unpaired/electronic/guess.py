@@ -10,7 +10,12 @@ from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
 
-DENSITIES = {"atomic superposition": "minao", "core Hamiltonian": "1e", "free atoms": "atom"}
+DENSITIES = {
+    "atomic superposition": "minao",
+    "core Hamiltonian": "1e",
+    "free atoms": "atom",
+    "Hueckel": "huckel",
+}
 """Starts made of the nuclei alone, by PySCF's name."""
 
 
