@@ -123,6 +123,13 @@ def test_degenerate_open_shell_of_methane_cation_is_told():
     assert state.engine["degenerate"] == "Jahn-Teller"
 
 
+def test_an_open_shell_of_two_degenerate_orbitals_is_named_as_a_whole():
+    """Twisted triplet ethylene, D2d: one electron in each p orbital; e of D2d is b2 + b3 of D2 (correlation tables)."""
+    side, end = 1.08 * np.sin(np.deg2rad(58.5)), 0.73 + 1.08 * np.cos(np.deg2rad(58.5))
+    shape = [[0, 0, 0.73], [0, 0, -0.73], [side, 0, end], [-side, 0, end], [0, side, -end], [0, -side, -end]]
+    assert solve(point(molecule("C C H H H H", shape, 0, 3))).solution.label == "b2 b3"
+
+
 def test_two_runs_agree_and_turning_the_molecule_changes_nothing():
     """Limits of the task: 1e-8 Eh between runs, 1e-6 Eh under rotation."""
     first, second = (solve(point(NITROGEN_CATION)) for _ in range(2))

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-from collections import Counter
 from dataclasses import dataclass
 from typing import Any
 
@@ -13,7 +12,7 @@ from numpy.typing import NDArray
 Array = NDArray[np.float64]
 
 PURE = 0.98
-"""Share of one symmetry species above which an orbital is called by it."""
+"""Share of a symmetry species above which an orbital is called by it (all open-shell orbitals together)."""
 LOOSE_BOHR = 0.1
 """Shapes this close to a threefold or higher axis are judged as if they had it (Jahn-Teller distortions)."""
 ANISOTROPY = 0.01
@@ -79,13 +78,16 @@ def state_label(mole: Any, symmetry: Symmetry, orbitals: Array, occupations: Arr
     By symmetry: species of the singly occupied orbitals, such as `b1` or `pi_g x2`. By populations: the largest
     ones, such as `C1 0.82 O3 0.15`.
     """
-    names = []
-    for orbital in open_shell(orbitals, occupations, overlap).T:
-        shares = {name: _share(orbital, columns, overlap) for name, columns in symmetry.species.items()}
-        best = max(shares, key=lambda name: shares[name], default="")
-        names.append(best if shares.get(best, 0.0) > PURE else "")
-    if names and all(names):
-        counted = sorted(Counter(names).items())
+    shell = open_shell(orbitals, occupations, overlap)
+    shares = {
+        name: sum(_share(orbital, columns, overlap) for orbital in shell.T)
+        for name, columns in symmetry.species.items()
+    }
+    counts = {name: round(share) for name, share in shares.items()}
+    if sum(counts.values()) == shell.shape[1] and all(
+        abs(shares[name] - n) < (1 - PURE) * shell.shape[1] for name, n in counts.items()
+    ):
+        counted = sorted((name, n) for name, n in counts.items() if n)
         return Label(" ".join(name if n == 1 else f"{name} x{n}" for name, n in counted), True)
     populations = spin_populations(mole, orbitals, occupations, overlap)
     order = np.argsort(-np.abs(np.round(populations, 3)), kind="stable")
