@@ -148,7 +148,7 @@ def test_at_zero_kelvin_only_the_lowest_counts() -> None:
 
 @pytest.mark.slow
 def test_a_killed_settling_goes_on_where_it_was(tmp_path: Path) -> None:
-    recipe(tmp_path, "[CH2]O")
+    recipe(tmp_path, "[NH2]")
     command = [sys.executable, "-m", "unpaired", "structure", "a.yaml", "--output", "a.xyz"]
     environment = {**os.environ, "PYTHONPATH": str(Path(__file__).parent.parent / "src")}
     process = subprocess.Popen(command, cwd=tmp_path, env=environment, stderr=subprocess.DEVNULL)
