@@ -117,3 +117,12 @@ def test_ligands_at_a_stiff_bond_are_told_apart_those_at_a_single_bond_are_not(
     angstrom = np.array([[0, 0, 0], [0, 0, length], [0.94, 0, -0.54], [-0.94, 0, -0.54]])
     alike = alike_atoms(drawing, Molecule(drawing.elements, angstrom / BOHR_ANGSTROM, 0, 2))
     assert len(set(alike[2:])) == kinds
+
+
+def test_beside_a_centre_of_handedness_nothing_is_taken_as_alike() -> None:
+    """The two protons of the CH2 in CH3-CH-CH2-CH(F)Cl are diastereotopic: no turning exchanges them."""
+    drawing = read_smiles("C[CH]CC(F)Cl")
+    molecule = Molecule(drawing.elements, starts(drawing)[0] / BOHR_ANGSTROM, 0, 2)
+    numbers = alike_atoms(drawing, molecule)
+    assert len(set(numbers)) == len(numbers)
+    assert not read_smiles("C[CH]CC").stereocentres

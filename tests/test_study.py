@@ -17,8 +17,9 @@ from unpaired.molecule import Molecule
 from unpaired.nuclei import isotope
 from unpaired.point import Point
 from unpaired.recipe.recipe import Recipe
+from unpaired.settled import Conformer, Settled
 from unpaired.state import Solution, State
-from unpaired.study import study
+from unpaired.study import assemble, plan, study
 
 ANGLES = np.deg2rad([0.0, 120.0, 240.0])
 METHYL = Molecule(
@@ -220,3 +221,15 @@ def test_any_map_runs_the_points() -> None:
 
     assert study(RECIPE, engine(), backwards).to_dict() == study(RECIPE, engine()).to_dict()
     assert len(seen) == 2
+
+
+@pytest.mark.parametrize(("s_squared", "severity"), [(0.76, None), (0.80, "caution"), (0.90, "bad")])
+def test_a_doubtful_further_conformer_is_said(s_squared: float, severity: str | None) -> None:
+    conformers = tuple(Conformer(METHYL, 0.001 * place, True, 100.0, None, 1) for place in range(2))
+    settled = Settled(METHYL, "", True, 100.0, conformers, (0.7, 0.3))
+    planned = plan(with_levels(Level("UHF", "pcH-1")), settled)
+    first, second = planned.every_point
+    found = assemble(planned, [engine()(first), engine(s_squared=s_squared)(second)]).rows("flags")
+    assert [row["severity"] for row in found if row["code"] == "conformer-doubtful"] == (
+        [severity] if severity else []
+    )

@@ -44,3 +44,8 @@ def join_codes(flags: list[Flag]) -> str:
     """Codes joined by `;`, each once, worst first."""
     ordered = sorted(flags, key=lambda flag: -SEVERITIES.index(flag.severity))
     return ";".join(dict.fromkeys(flag.code for flag in ordered))
+
+
+def worst(flags: list[Flag]) -> Severity:
+    """The highest severity among flags (at least one)."""
+    return max((flag.severity for flag in flags), key=SEVERITIES.index)

@@ -79,7 +79,8 @@ def curvature_of(surface: Surface, coordinates_bohr: Floats) -> Curvature:
         )
     model, name = _model_hessian(surface, coordinates_bohr)
     found = lowest_mode(hessian_product(surface, coordinates_bohr), model, coordinates_bohr, masses)
-    clear = found.residual_cm <= CONVERGED_CM and abs(found.wavenumber_cm) >= FLAT_CM
+    # some mode lies within the residual of ours: it must not reach below zero
+    clear = found.residual_cm <= CONVERGED_CM and found.wavenumber_cm >= max(FLAT_CM, found.residual_cm)
     # A negative curvature along any direction proves a saddle, converged or not.
     minimum = False if found.wavenumber_cm <= -FLAT_CM else (True if clear else None)
     return Curvature(

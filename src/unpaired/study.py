@@ -7,10 +7,10 @@ from dataclasses import dataclass
 from functools import partial
 from typing import Any
 
-from . import analysis, columns
+from . import analysis, columns, diagnostics, solutions
 from .ensemble import averaged_mT, conformer_rows
 from .execute import Outcome, Solve, attempt
-from .flag import Flag, join_codes
+from .flag import Flag, join_codes, worst
 from .level import Level
 from .molecule import Molecule
 from .nuclei import table_isotope
@@ -108,11 +108,16 @@ def assemble(planned: Plan, outcomes: Sequence[Outcome]) -> Result:
             part = _failed(planned, point, outcome)
         else:
             part = analysis.analyse(point, outcome, planned.groups, planned.isotopes)
-        flags += part.flags
         details[point.level.id] = part.details
         for row in part.tables["states"]:
             row |= {"minimum": settled.minimum, "lowest_mode_cm": settled.lowest_mode_cm}
-        _add_conformers(part, planned, outcomes[place :: len(planned.points)])
+        _add_conformers(
+            part,
+            planned,
+            planned.every_point[place :: len(planned.points)],
+            outcomes[place :: len(planned.points)],
+        )
+        flags += part.flags
         for name, rows in part.tables.items():
             tables[name] += [_common(planned, point.level, name) | row for row in rows]
     flags += analysis.across_levels(planned.points, outcomes[: len(planned.points)])
@@ -159,16 +164,35 @@ def _how_settled(settled: Settled) -> dict[str, Any]:
     }
 
 
-def _add_conformers(part: analysis.Part, planned: Plan, outcomes: Sequence[Outcome]) -> None:
+def _add_conformers(
+    part: analysis.Part, planned: Plan, points: Sequence[Point], outcomes: Sequence[Outcome]
+) -> None:
     """Rows per conformer and the thermal means, where there are several conformers."""
     settled = planned.settled
     if len(settled.conformers) < 2:
         return
     part.tables["conformers"] = conformer_rows(settled, outcomes, planned.isotopes)
+    part.flags += _conformer_flags(points[1:], outcomes[1:])
     means = averaged_mT(settled, outcomes, planned.isotopes, planned.groups)
     if means is not None:
         for row, mean in zip(part.tables["couplings"], means, strict=True):
             row["a_averaged_mT"] = mean
+
+
+def _conformer_flags(points: Sequence[Point], outcomes: Sequence[Outcome]) -> list[Flag]:
+    """Doubtful states among the conformers beyond the first, whose couplings enter the averages."""
+    flags = []
+    for number, (point, outcome) in enumerate(zip(points, outcomes, strict=True), start=2):
+        if isinstance(outcome, Failure):
+            advice = f"conformer {number} has no couplings ({outcome.message}): there is no average over conformers"
+            flags.append(Flag("conformer-failed", "caution", advice, level=point.level.id))
+            continue
+        found = [*diagnostics.contamination_flags(outcome, point), *solutions.state_flags(point, outcome)]
+        found = [flag for flag in found if flag.severity != "note"]
+        if found:
+            advice = f"conformer {number}, which enters the averages: {join_codes(found)}"
+            flags.append(Flag("conformer-doubtful", worst(found), advice, level=point.level.id))
+    return flags
 
 
 def _failed(planned: Plan, point: Point, outcome: Failure) -> analysis.Part:

@@ -120,8 +120,11 @@ def alike_atoms(drawing: Drawing, molecule: Molecule) -> tuple[int, ...]:
     """Per atom a number; atoms that turning and inverting can exchange have the same one.
 
     The classes of the drawing, except that two ligands at the end of a stiff bond (the =CH2 of vinyl or allyl) are
-    told apart.
+    told apart, and that beside a centre of handedness nothing is taken as alike: the two protons of a CH2 are
+    then different in every conformer, and no turning exchanges them.
     """
+    if drawing.stereocentres:
+        return tuple(range(len(molecule.elements)))
     alike = list(drawing.classes)
     elements = molecule.elements
     bonded = neighbours(elements, molecule.coordinates_angstrom)

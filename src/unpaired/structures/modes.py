@@ -83,7 +83,10 @@ class LowestMode:
     displacement: Floats
     """Shape (atoms, 3), Cartesian, length 1."""
     residual_cm: float
-    """The true lowest wavenumber's square differs from ours by less than this one's square."""
+    """The square of some wavenumber lies within this one's square of ours.
+
+    That it is the lowest rests on the two start directions: a mode that both are blind to stays hidden.
+    """
     products: int
     """How many times the Hessian was multiplied by a direction."""
 

@@ -28,6 +28,8 @@ class Drawing:
     """Atom, atom, bond order (1.5 for aromatic)."""
     mol: Any = field(repr=False)
     """The RDKit molecule with its hydrogens."""
+    stereocentres: bool = False
+    """True if it has a centre of handedness, drawn or not: atoms that look alike on paper may then differ."""
 
     @property
     def labels(self) -> tuple[str, ...]:
@@ -52,6 +54,7 @@ def read_smiles(smiles: str) -> Drawing:
     if len(Chem.GetMolFrags(mol)) > 1:
         raise StructureError(f'smiles "{smiles}": the dot makes it two molecules; give one radical')
     mol = Chem.AddHs(mol)
+    centres: Any = Chem.FindMolChiralCenters  # untyped in RDKit
     elements = tuple(atom.GetSymbol() for atom in mol.GetAtoms())
     for element in elements:
         if element not in ATOMIC_NUMBER:
@@ -72,6 +75,7 @@ def read_smiles(smiles: str) -> Drawing:
             for bond in mol.GetBonds()
         ),
         mol=mol,
+        stereocentres=bool(centres(mol, includeUnassigned=True, useLegacyImplementation=False)),
     )
 
 
