@@ -9,6 +9,7 @@ them take longer to import than `unpaired --help` may.
 
 from __future__ import annotations
 
+import os
 import sys
 from importlib import import_module
 from types import ModuleType
@@ -36,6 +37,10 @@ if TYPE_CHECKING:
     from .state import State
     from .study import study
     from .tables import couplings_table, flags_table, states_table
+
+# OpenMP reads this once, when the first library that uses it is loaded. Its threads would otherwise wait in busy
+# loops and take the cores from NumPy's (measured in electronic/threads.py).
+os.environ.setdefault("OMP_WAIT_POLICY", "PASSIVE")
 
 __all__ = [
     "CalculationError",

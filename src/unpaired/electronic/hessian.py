@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from .boundary import library_errors
 from .surface import Surface
+from .threads import suited_to
 
 Floats = NDArray[np.float64]
 
@@ -27,7 +28,7 @@ def analytic_hessian(surface: Surface, coordinates_bohr: Floats) -> Floats | Non
     field = surface.converged(coordinates_bohr)
     if min(field.mol.nelec) == 0:  # PySCF's response fails on an empty spin
         return None
-    with library_errors(f"{surface.level.id}, second derivatives"):
+    with library_errors(f"{surface.level.id}, second derivatives"), suited_to(field.mol.nao):
         try:
             hessian = field.Hessian().set(verbose=0).kernel()
         except NotImplementedError:

@@ -17,6 +17,7 @@ from .mole import build_mole
 from .search import Outcome, search
 from .settings import settings
 from .solutions import Found
+from .threads import suited_to
 
 Report = Callable[[str, int, float], None]
 """Called with (stage, iteration, energy_Eh) while a calculation runs."""
@@ -29,12 +30,13 @@ def solve(point: Point, report: Report | None = None, start: str = "atomic super
     Raises CalculationError (ConvergenceError, ResourceError, EngineError) with the reason.
     """
     with library_errors(point.level.id):
-        return _solve(point, report, start)
+        mole = build_mole(point)
+        with suited_to(mole.nao):
+            return _solve(point, mole, report, start)
 
 
-def _solve(point: Point, report: Report | None, start: str) -> State:
+def _solve(point: Point, mole: Any, report: Report | None, start: str) -> State:
     started = time.perf_counter()
-    mole = build_mole(point)
     field = mean_field(mole, point.level, point.solvent, settings(point.level))
     iterations = 0
 

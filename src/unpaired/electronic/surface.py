@@ -23,6 +23,7 @@ from .meanfield import mean_field
 from .mole import build_mole
 from .settings import Settings, identity
 from .stability import internal_stability
+from .threads import suited_to
 
 Floats = NDArray[np.float64]
 Report = Callable[[str, int, float, float], None]
@@ -85,7 +86,7 @@ class Surface:
         if known is not None:
             return known
         field = self.converged(coordinates)
-        with library_errors(f"{self.level.id}, gradient"):
+        with library_errors(f"{self.level.id}, gradient"), suited_to(field.mol.nao):
             gradient = np.asarray(field.nuc_grad_method().set(verbose=0).kernel())
         self.computed += 1
         self._remember(coordinates, float(field.e_tot), gradient)
@@ -98,7 +99,7 @@ class Surface:
         """
         field = self.field(coordinates_bohr)
         guess = self._guess(coordinates_bohr, field.mol.nao)
-        with library_errors(self.level.id):
+        with library_errors(self.level.id), suited_to(field.mol.nao):
             converge(field, field.get_init_guess(key="minao") if guess is None else guess)
         if not field.converged:
             raise ConvergenceError(f"{self.level.id}: the self-consistent field did not converge on relaxing")
