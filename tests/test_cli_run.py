@@ -101,7 +101,7 @@ def test_check_says_what_would_run_and_runs_nothing(folder: Path, capsys) -> Non
     assert unpaired("check", "h.yaml") == 0
     head, first, second, last = capsys.readouterr().out.splitlines()
     assert head.split()[:4] == ["radical", "level", "atoms", "electrons"]
-    assert first.split()[:5] == ["hydrogen", "UHF/pcH-1", "1", "1", "10"]
+    assert first.split()[:7] == ["hydrogen", "UHF/pcH-1", "1", "1", "0", "2", "10"]
     assert second.split()[1] == "ROHF/pcH-1"
     assert last.startswith("2 points")
     assert not (folder / "results").exists()

@@ -7,6 +7,7 @@ from pathlib import Path
 
 from unpaired import columns
 from unpaired.errors import CalculationError
+from unpaired.recipe.load import load_recipe
 
 ROOT = Path(__file__).parent.parent
 README = (ROOT / "README.md").read_text(encoding="utf-8")
@@ -19,6 +20,14 @@ def block(name: str) -> str:
 
 def test_the_table_of_columns_is_the_registry() -> None:
     assert block("columns") == columns.markdown()
+
+
+def test_the_recipe_that_is_explained_is_accepted(tmp_path: Path) -> None:
+    (tmp_path / "recipes").mkdir()
+    (tmp_path / "molecules").symlink_to(ROOT / "molecules")
+    recipe = tmp_path / "recipes" / "readme.yaml"
+    recipe.write_text(README.split("```yaml\n")[1].split("```")[0], encoding="utf-8")
+    assert load_recipe(recipe).radical == "hydroxymethyl"
 
 
 def test_every_finding_and_every_failure_is_explained() -> None:

@@ -166,9 +166,9 @@ def high_spin_flags(point: Point) -> list[Flag]:
     return [
         Flag(
             "zero-field-splitting",
-            "note",
-            "more than one unpaired electron: couplings are per 2S, and zero-field splitting, which shapes "
-            "the spectrum, is not computed",
+            "caution",
+            "more than one unpaired electron (an even number of electrons gives a triplet unless the recipe says "
+            "otherwise): couplings are per 2S, and zero-field splitting, which shapes the spectrum, is not computed",
             float(point.molecule.multiplicity),
             2.0,
             point.level.id,

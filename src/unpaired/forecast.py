@@ -23,7 +23,17 @@ def forecast_report(recipes: Sequence[Recipe]) -> str:
 
     plans = [plan(recipe) for recipe in recipes]
     require_memory(plans)
-    head = ["radical", "level", "atoms", "electrons", "basis functions", "memory / GiB", "time / s"]
+    head = [
+        "radical",
+        "level",
+        "atoms",
+        "electrons",
+        "charge",
+        "2S+1",
+        "basis functions",
+        "memory / GiB",
+        "time / s",
+    ]
     lines, total_s = [], 0.0
     for planned in plans:
         for point in planned.points:
@@ -35,6 +45,8 @@ def forecast_report(recipes: Sequence[Recipe]) -> str:
                     point.level.id,
                     str(len(point.molecule.elements)),
                     str(point.molecule.electrons),
+                    f"{point.molecule.charge:+d}" if point.molecule.charge else "0",
+                    str(point.molecule.multiplicity),
                     str(cost.basis_functions),
                     f"{cost.memory_bytes / GIB:.2f}",
                     f"{cost.seconds:.1f}",

@@ -29,6 +29,8 @@ def coupling_report(result: Result) -> str:
         lines.append(cells)
     unassigned = [item for item in result.recipe["measured"] if not item["atoms"]]
     text = layout(head, lines, left=3)
+    if "|" in text or unassigned:
+        text += "|x|: measured with unknown sign, a magnitude\n"
     for item in unassigned:
         text += f"measured, not assigned: {_count(item)} x {_measured(item)} mT\n"
     return text

@@ -161,7 +161,7 @@ def projection_flags(point: Point, couplings: Sequence[Mapping[str, Any]]) -> li
         Flag(
             "projection-matters",
             "caution",
-            f"removing higher spins changes couplings much, most {atom}: {plain:.3f} mT becomes {pure:.3f} mT; "
+            f"removing higher spins changes couplings much, most {atom}: {plain:+.3f} mT becomes {pure:+.3f} mT; "
             "experiment usually lies between",
             abs(plain - pure),
             limit,

@@ -20,10 +20,13 @@ class Section:
         """Keys whose value was refused: nothing that depends on them needs a second complaint."""
         for key, entry in node.entries.items():
             if key not in keys:
+                units = (
+                    " (convert the number: 1 mT = 10 G = 28.025 MHz)" if key.startswith("coupling_") else ""
+                )
                 problems.add(
                     entry.line,
                     self.key(key),
-                    f"unknown key{nearest(key, keys)}; allowed: {', '.join(keys)}; found: {key}",
+                    f"unknown key{nearest(key, keys)}{units}; allowed: {', '.join(keys)}; found: {key}",
                 )
 
     def key(self, name: str) -> str:
