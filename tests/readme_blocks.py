@@ -2,8 +2,8 @@
 
     python tests/readme_blocks.py columns demo
 
-`columns` takes the registry; `demo` runs the README's demo recipes afresh and writes what they print. A test
-compares `columns`; the demo's times differ from run to run, so its numbers are compared without them.
+`columns` takes the registry, and a test compares it. `demo` runs the README's demo recipes afresh and writes what
+they print; its times differ from run to run, so that no test compares it: run this after numbers have changed.
 """
 
 from __future__ import annotations
