@@ -165,7 +165,7 @@ def test_size_of_the_contamination_is_told_where_projection_changes_much():
     ]
     (flag,) = projection_flags(point(HYDROXYL), rows)
     assert (flag.value, flag.limit) == (2.0, 0.4)
-    assert "C1: 4.000 mT becomes 2.000 mT" in flag.advice
+    assert "C1: +4.000 mT becomes +2.000 mT" in flag.advice
     assert projection_flags(point(HYDROXYL, "UKS"), rows) == []
 
 
