@@ -13,6 +13,7 @@ from functools import cache
 from pathlib import Path
 
 import pytest
+from hits import predicted_and_measured_mT
 
 from unpaired.recipe.load import load_recipe
 from unpaired.result import Result
@@ -70,12 +71,7 @@ def result(name: str) -> Result:
 @pytest.mark.slow
 @pytest.mark.parametrize(("name", "place"), _cases())
 def test_a_measured_coupling_is_hit(name: str, place: int) -> None:
-    item = result(name).recipe["measured"][place]
-    values = [row["a_iso_mT"] for row in result(name).rows("couplings") if row["atom"] in item["atoms"]]
-    predicted = sum(values) / len(values)
-    measured = item["coupling_mT"]
-    if item["sign"] == "unknown":
-        predicted = abs(predicted)
+    predicted, measured = predicted_and_measured_mT(result(name), place)
     assert predicted == pytest.approx(measured, abs=max(0.15 * abs(measured), 0.08))
 
 
