@@ -1,12 +1,11 @@
 """What `unpaired check` says about memory and time."""
 
 import multiprocessing
-import resource
-import sys
 from dataclasses import replace
 
 import numpy as np
 import pytest
+from peak import peak_bytes
 
 from unpaired.electronic import cost
 from unpaired.electronic.meanfield import mean_field
@@ -66,8 +65,7 @@ def peak(point: Point, answer: "multiprocessing.Queue[int]") -> None:
     from unpaired.electronic.solve import solve
 
     solve(point)
-    unit = 1 if sys.platform == "darwin" else 1024
-    answer.put(resource.getrusage(resource.RUSAGE_SELF).ru_maxrss * unit)
+    answer.put(peak_bytes())
 
 
 @pytest.mark.slow

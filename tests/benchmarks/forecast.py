@@ -8,7 +8,6 @@ prints expected and measured memory and time and their ratios, and the largest o
 from __future__ import annotations
 
 import multiprocessing
-import resource
 import sys
 import time
 from multiprocessing.queues import Queue
@@ -20,16 +19,18 @@ from unpaired.recipe.load import load_recipe
 from unpaired.study import plan
 
 ROOT = Path(__file__).parents[2]
+sys.path.insert(0, str(ROOT / "tests"))
 
 
 def measure(point: Point, answer: Queue[tuple[float, int]]) -> None:
     """Wall time of solve and peak memory of the process."""
+    from peak import peak_bytes
+
     from unpaired.electronic.solve import solve
 
     started = time.perf_counter()
     solve(point)
-    peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss * (1 if sys.platform == "darwin" else 1024)
-    answer.put((time.perf_counter() - started, peak))
+    answer.put((time.perf_counter() - started, peak_bytes()))
 
 
 def main() -> None:
