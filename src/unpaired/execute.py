@@ -14,7 +14,7 @@ from concurrent.futures import BrokenExecutor, Future, ProcessPoolExecutor
 from multiprocessing import get_context
 from typing import Any, Protocol
 
-from .errors import CalculationError, ResourceError, StoreError, UnpairedError, WorkerError
+from .errors import ResourceError, UnpairedError, WorkerError
 from .point import Point
 from .state import Failure, State
 from .store import Store
@@ -75,7 +75,7 @@ def attempt(solve: Solve, point: Point, report: Report | None = None) -> Outcome
     """solve(point), with any failure as an outcome."""
     try:
         return solve(point, report)
-    except (CalculationError, StoreError, MemoryError, Exception) as error:
+    except Exception as error:
         return failure(error)
 
 

@@ -32,7 +32,7 @@ def coupling_report(result: Result) -> str:
     if "|" in text or unassigned:
         text += "|x|: measured with unknown sign, a magnitude\n"
     for item in unassigned:
-        text += f"measured, not assigned: {_count(item)} x {_measured(item)} mT\n"
+        text += f"measured, not assigned: {item['count']} x {_measured(item)} mT\n"
     return text
 
 
@@ -155,10 +155,6 @@ def _measured_per_group(result: Result) -> dict[str, str]:
 
 def _measured(item: Row) -> str:
     return f"|{item['coupling_mT']:g}|" if item["sign"] == "unknown" else f"{item['coupling_mT']:+g}"
-
-
-def _count(item: Row) -> int:
-    return int(item["count"])
 
 
 def layout(head: Sequence[str], lines: Sequence[Sequence[str]], left: int, left_last: bool = False) -> str:

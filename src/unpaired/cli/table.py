@@ -17,7 +17,7 @@ def table(
 ) -> None:
     """Collect finished runs into one tidy table."""
     from ..columns import names
-    from ..errors import ChoiceError, InputError, nearest
+    from ..errors import InputError, require_choice
     from ..files import write_atomically
     from ..result import load_result
     from ..tables import FORMATS, collect
@@ -26,10 +26,7 @@ def table(
     form = format or (endings.get(output.suffix.lower()) if output else "csv")
     if form is None:
         raise InputError(f"{output}: the ending tells no format; use {', '.join(endings)} or give --format")
-    if form not in FORMATS:
-        raise ChoiceError(
-            f'--format: "{form}" does not exist{nearest(form, FORMATS)} (there are {", ".join(FORMATS)})'
-        )
+    require_choice("--format", form, tuple(FORMATS))
     if form == "parquet" and output is None:
         raise InputError("--format parquet: is not text, give --output FILE.parquet")
     rows = collect([load_result(path) for path in results], of)

@@ -11,7 +11,7 @@ import numpy as np
 from ..constants import BOHR_ANGSTROM
 from ..errors import StructureError
 from .distances import check_distances
-from .geometry import Geometry
+from .geometry import Geometry, structure_text
 from .quiet import rdkit_messages
 from .xyz import element_symbol
 
@@ -26,14 +26,7 @@ def read_sdf(path: str | Path) -> Geometry:
     Formal charges add up to `charge`; isotope labels become `isotopes`. Raises StructureError with file and
     line for several structures, drawings without depth, wrong valences, overlapping atoms, two molecules.
     """
-    place = Path(path)
-    try:
-        text = place.read_text(encoding="utf-8")
-    except OSError as error:
-        raise StructureError(f"{place}: cannot be read ({error.strerror or error})") from None
-    except UnicodeDecodeError:
-        raise StructureError(f"{place}: is not a text file in UTF-8") from None
-    return parse_sdf(text, str(place))
+    return parse_sdf(structure_text(path), str(path))
 
 
 def parse_sdf(text: str, name: str) -> Geometry:

@@ -11,7 +11,7 @@ from ..constants import BOHR_ANGSTROM
 from ..errors import StructureError, nearest
 from ..molecule import ATOMIC_NUMBER, Molecule
 from .distances import check_distances
-from .geometry import Geometry
+from .geometry import Geometry, structure_text
 
 __all__ = ["Geometry", "element_symbol", "parse_xyz", "read_xyz", "xyz_text"]
 
@@ -26,14 +26,7 @@ def read_xyz(path: str | Path) -> Geometry:
     Raises StructureError with file and line for a file that cannot be read, a wrong count, an unknown
     element, a coordinate that is not a number, overlapping atoms, two separate molecules.
     """
-    place = Path(path)
-    try:
-        text = place.read_text(encoding="utf-8")
-    except OSError as error:
-        raise StructureError(f"{place}: cannot be read ({error.strerror or error})") from None
-    except UnicodeDecodeError:
-        raise StructureError(f"{place}: is not a text file in UTF-8") from None
-    return parse_xyz(text, str(place))
+    return parse_xyz(structure_text(path), str(path))
 
 
 def parse_xyz(text: str, name: str) -> Geometry:
