@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from functools import lru_cache
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
+from ..level import Level
 from ..minimal import BeyondMinimalBasis, MinimalBasis
-from ..molecule import SYMBOLS
+from ..molecule import ATOMIC_NUMBER, SYMBOLS, Molecule
 from ..point import Point
 from .mole import build_mole
 
@@ -16,6 +19,12 @@ Array = NDArray[np.float64]
 
 BLOCK_BYTES = 64_000_000
 """Basis functions on points are evaluated in blocks of about this size."""
+KEPT_BYTES = 200_000_000
+"""Dipolar operators up to this size are kept for the next level of the same molecule."""
+
+
+UPPER = tuple((i, j) for i in range(3) for j in range(i, 3))
+"""Elements of a symmetric tensor, in the order of `_operators`."""
 
 
 def field_gradients(point: Point, spin_density_matrix: Array) -> Array:
@@ -25,16 +34,17 @@ def field_gradients(point: Point, spin_density_matrix: Array) -> Array:
     derivative of 1/r without its contact term; by parts that is
     2 sum_mn P_mn (<d_i d_j m|1/r|n> + <d_i m|1/r|d_j n>), of which the contact term is exactly the trace.
     """
-    mole = build_mole(point)
-    flat = spin_density_matrix.ravel()
-    found = np.empty((mole.natm, 3, 3))
-    for atom in range(mole.natm):
-        with mole.with_rinv_at_nucleus(atom):
-            twice = mole.intor("int1e_ipiprinv", comp=9).reshape(9, -1) @ flat
-            # Half of the pairs suffice: exchanging m and n exchanges i and j, which is symmetrised below.
-            once = mole.intor("int1e_iprinvip", comp=9, hermi=1).reshape(9, -1) @ flat
-        found[atom] = 2 * (twice + once).reshape(3, 3)
-    found = (found + found.transpose(0, 2, 1)) / 2
+    molecule = point.molecule
+    atoms, functions = len(molecule.elements), len(spin_density_matrix)
+    where = _where(point)
+    small = atoms * len(UPPER) * functions * (functions + 1) // 2 * 8 <= KEPT_BYTES
+    operators = _kept_operators(where) if small else _operators(where)
+    lower = spin_density_matrix[np.tril_indices(functions)] * 2.0
+    lower[np.cumsum(np.arange(1, functions + 1)) - 1] /= 2.0  # the diagonal counts once
+    found = np.empty((atoms, 3, 3))
+    for atom, packed in enumerate(operators):
+        for (i, j), value in zip(UPPER, packed @ lower, strict=True):
+            found[atom, i, j] = found[atom, j, i] = value
     trace = np.trace(found, axis1=1, axis2=2)
     return np.asarray(found - trace[:, None, None] / 3 * np.eye(3))
 
@@ -44,15 +54,63 @@ def minimal_basis(point: Point) -> MinimalBasis:
 
     Raises BeyondMinimalBasis for an element that the set does not have (potassium, and those after krypton).
     """
-    from pyscf import gto
-    from pyscf.lo.iao import reference_mol
-
     lacking = {"K"} | set(SYMBOLS[36:])
     for element in point.molecule.elements:
         if element in lacking:
             raise BeyondMinimalBasis(f"there are no free-atom functions for {element}")
-    mole = build_mole(point)
-    reference = reference_mol(mole, "minao")
+    return _free_atom_functions(_where(point))
+
+
+class _Where(NamedTuple):
+    """Nuclei and basis set: what the integrals depend on."""
+
+    elements: tuple[str, ...]
+    coordinates_bohr: bytes
+    basis: str
+
+    def mole(self) -> Any:
+        coordinates = np.frombuffer(self.coordinates_bohr).reshape(-1, 3)
+        multiplicity = 1 + sum(ATOMIC_NUMBER[e] for e in self.elements) % 2  # any that is possible will do
+        return build_mole(
+            Point(Molecule(self.elements, coordinates, 0, multiplicity), Level("UHF", self.basis))
+        )
+
+
+def _where(point: Point) -> _Where:
+    molecule = point.molecule
+    return _Where(molecule.elements, molecule.coordinates_bohr.tobytes(), point.level.basis)
+
+
+def _operators(where: _Where) -> Iterator[Array]:
+    """For nucleus after nucleus the operators of `UPPER`, shape (6, pairs of functions), lower triangles."""
+    mole = where.mole()
+    rows, columns = np.tril_indices(mole.nao)
+    for atom in range(mole.natm):
+        with mole.with_rinv_at_nucleus(atom):
+            second = mole.intor("int1e_ipiprinv", comp=9) + mole.intor("int1e_iprinvip", comp=9)
+        second = second.reshape(3, 3, mole.nao, mole.nao)
+        # Exchanging the two functions exchanges the two axes.
+        both = [second[i, j] + second[j, i] for i, j in UPPER]
+        yield np.stack([(one[rows, columns] + one[columns, rows]) / 2 for one in both])
+
+
+@lru_cache(maxsize=1)
+def _kept_operators(where: _Where) -> tuple[Array, ...]:
+    """`_operators` of the molecule at hand: every level of a recipe asks for the same."""
+    return tuple(_operators(where))
+
+
+@lru_cache(maxsize=1)
+def _free_atom_functions(where: _Where) -> MinimalBasis:
+    from pyscf import gto
+
+    mole = where.mole()
+    reference = gto.Mole()
+    reference.unit = "Bohr"
+    reference.atom = [(e, mole.atom_coord(k)) for k, e in enumerate(where.elements)]
+    reference.basis = {e: gto.basis.load("minao", e) for e in set(where.elements)}
+    reference.spin, reference.verbose = None, 0
+    reference.build(dump_input=False, parse_arg=False)
     labels = reference.ao_labels(fmt=False)
     charges = [gto.charge(symbol) for _, symbol, _, _ in labels]
     axes = {"px": (1.0, 0.0, 0.0), "py": (0.0, 1.0, 0.0), "pz": (0.0, 0.0, 1.0)}
