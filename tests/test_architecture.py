@@ -29,7 +29,7 @@ origin solutions analysis
 store
 execute
 study
-report tables
+layout report tables
 spinsystem
 spectrum contrast
 """

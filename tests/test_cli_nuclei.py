@@ -12,7 +12,6 @@ import typer
 from typer.testing import CliRunner
 
 from unpaired.cli import _with_exit_status, app
-from unpaired.cli.plain import plain_table
 from unpaired.errors import ConvergenceError, InputError, StoreError, UnpairedError
 from unpaired.nuclei import all_isotopes
 
@@ -148,9 +147,3 @@ def test_help_takes_under_half_a_second() -> None:
         return after.children_user + after.children_system - before.children_user - before.children_system
 
     assert min(seconds() for _ in range(3)) < 0.5
-
-
-def test_numbers_are_set_flush_right_and_empty_cells_are_marked() -> None:
-    assert plain_table(("name", "value"), [("a", "1.5"), ("bcdef", "")]) == (
-        "name   value\na        1.5\nbcdef      -"
-    )

@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 
 from .errors import InputError
-from .report import layout
+from .layout import layout
 from .result import Result, Row
 
 ORDER = ("ROHF", "UHF projected", "UHF", "ROKS", "UKS")

@@ -6,9 +6,9 @@ from collections.abc import Callable, Sequence
 
 from . import machine
 from .errors import InputError
+from .layout import layout
 from .point import Point
 from .recipe.recipe import Recipe
-from .report import layout
 from .study import Plan, plan
 
 GIB = 2**30

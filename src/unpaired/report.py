@@ -6,6 +6,7 @@ import textwrap
 from collections.abc import Sequence
 
 from .constants import MHZ_PER_MT
+from .layout import layout
 from .result import Result, Row
 
 MARKS = {"bad": "!!", "caution": "! ", "note": "  "}
@@ -155,17 +156,3 @@ def _measured_per_group(result: Result) -> dict[str, str]:
 
 def _measured(item: Row) -> str:
     return f"|{item['coupling_mT']:g}|" if item["sign"] == "unknown" else f"{item['coupling_mT']:+g}"
-
-
-def layout(head: Sequence[str], lines: Sequence[Sequence[str]], left: int, left_last: bool = False) -> str:
-    """Columns two spaces apart; the first `left` columns (and the last, if asked) are flush left."""
-    table = [list(head), *[list(line) for line in lines]]
-    widths = [max(len(row[place]) for row in table) for place in range(len(head))]
-    text = ""
-    for row in table:
-        cells = []
-        for place, (cell, width) in enumerate(zip(row, widths, strict=True)):
-            flush_left = place < left or (left_last and place == len(row) - 1)
-            cells.append(cell.ljust(width) if flush_left else cell.rjust(width))
-        text += "  ".join(cells).rstrip() + "\n"
-    return text

@@ -8,9 +8,11 @@ from typing import Annotated
 
 import typer
 
+from .choices import Results
+
 
 def contrast(
-    results: Annotated[list[Path], typer.Argument(metavar="RESULT...", help="Folders that runs left.")],
+    results: Results,
     output: Annotated[
         Path | None, typer.Option(help="File: .csv (tidy table), .svg or .png (plot). Default: print.")
     ] = None,

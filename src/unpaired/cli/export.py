@@ -8,29 +8,22 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
+from .choices import GFactor, LevelId, NamedIsotopes, Results, Satellites, WhichCoupling, isotope_labels
+
 if TYPE_CHECKING:
     from ..spinsystem import SpinSystem
 
 
 def export(
-    results: Annotated[list[Path], typer.Argument(metavar="RESULT...", help="Folders that runs left.")],
-    level: Annotated[str | None, typer.Option(help="Level id; default: the last of each recipe.")] = None,
-    g: Annotated[
-        float | None, typer.Option("--g", help="g; default: the measured one of the recipe, else g_e.")
-    ] = None,
+    results: Results,
+    level: LevelId = None,
+    g: GFactor = None,
     peak_to_peak_width_mT: Annotated[
         float | None, typer.Option("--peak-to-peak-width-mT", help="Line width to hand over, if any.")
     ] = None,
-    isotope: Annotated[
-        list[str] | None,
-        typer.Option(metavar="ATOM=ISOTOPE", help="Such as C1=13C, or H=2H for all; may be repeated."),
-    ] = None,
-    satellites: Annotated[
-        float | None, typer.Option(metavar="SHARE", help="Keep natural isotopologues down to this share.")
-    ] = None,
-    coupling: Annotated[
-        str, typer.Option(help="averaged (where the result has it) or equilibrium.")
-    ] = "averaged",
+    isotope: NamedIsotopes = None,
+    satellites: Satellites = None,
+    coupling: WhichCoupling = "averaged",
     output: Annotated[Path | None, typer.Option(help="JSON file; default: standard output.")] = None,
     flat: Annotated[
         Path | None, typer.Option(metavar="FILE.csv", help="Also a CSV file, one row per group.")
@@ -45,7 +38,6 @@ def export(
     from ..result import load_result
     from ..spectrum.isotopologues import Question, spin_systems, taken_notes
     from ..spinsystem import systems_csv, systems_text
-    from .choices import isotope_labels
 
     for path, ending in ((output, ".json"), (flat, ".csv")):
         if path is not None and path.suffix.lower() != ending:

@@ -32,11 +32,11 @@ def nuclei(
     The coupling is that of a doublet with a spin density of 1 bohr^-3 at the nucleus, in mT for g_e.
     Abundance is the natural share of the element's nuclei (0 to 1).
     """
+    from ..layout import layout
     from ..nuclei import all_isotopes, isotope
-    from .plain import plain_table
 
     chosen = [isotope(name) for name in isotopes] if isotopes else all_isotopes()
-    print(plain_table(HEADINGS, [_cells(nucleus) for nucleus in chosen]))
+    print(layout(HEADINGS, [_cells(nucleus) for nucleus in chosen], left=1, left_last=True), end="")
 
 
 def _cells(nucleus: Isotope) -> list[str]:
@@ -51,6 +51,6 @@ def _cells(nucleus: Isotope) -> list[str]:
         f"{nucleus.abundance:.9g}",
         f"{coupling_MHz:.4f}",
         f"{mT_from_MHz(coupling_MHz):.5f}",
-        "" if quadrupole is None else f"{quadrupole:.9g}",
+        "-" if quadrupole is None else f"{quadrupole:.9g}",
         nucleus.source,
     ]

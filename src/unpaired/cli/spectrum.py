@@ -9,6 +9,8 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
+from .choices import GFactor, LevelId, NamedIsotopes, Results, Satellites, WhichCoupling, isotope_labels
+
 if TYPE_CHECKING:
     from ..result import Result
     from ..spectrum.curve import Curve
@@ -25,17 +27,15 @@ ENDINGS = (".csv", ".svg", ".png")
 
 
 def spectrum(
-    results: Annotated[list[Path], typer.Argument(metavar="RESULT...", help="Folders that runs left.")],
-    level: Annotated[str | None, typer.Option(help="Level id; default: the last of each recipe.")] = None,
+    results: Results,
+    level: LevelId = None,
     frequency_GHz: Annotated[
         float | None, typer.Option("--frequency-GHz", help="Fixed frequency, the field is swept (9.5).")
     ] = None,
     field_mT: Annotated[
         float | None, typer.Option("--field-mT", help="Fixed field instead: the frequency is swept.")
     ] = None,
-    g: Annotated[
-        float | None, typer.Option("--g", help="g; default: the measured one of the recipe, else g_e.")
-    ] = None,
+    g: GFactor = None,
     peak_to_peak_width_mT: Annotated[
         float, typer.Option("--peak-to-peak-width-mT", help="Width of the first derivative.")
     ] = 0.1,
@@ -63,16 +63,9 @@ def spectrum(
     noise: Annotated[float, typer.Option(help="Noise as a share of the largest signal.")] = 0.0,
     seed: Annotated[int, typer.Option(help="Seed of the noise.")] = 0,
     order: Annotated[str, typer.Option(help="Line positions: auto, exact, second or first.")] = "auto",
-    isotope: Annotated[
-        list[str] | None,
-        typer.Option(metavar="ATOM=ISOTOPE", help="Such as C1=13C, or H=2H for all; may be repeated."),
-    ] = None,
-    satellites: Annotated[
-        float | None, typer.Option(metavar="SHARE", help="Keep natural isotopologues down to this share.")
-    ] = None,
-    coupling: Annotated[
-        str, typer.Option(help="averaged (where the result has it) or equilibrium.")
-    ] = "averaged",
+    isotope: NamedIsotopes = None,
+    satellites: Satellites = None,
+    coupling: WhichCoupling = "averaged",
     weight: Annotated[
         list[float] | None, typer.Option(help="Weight of a RESULT, in their order; may be repeated.")
     ] = None,
@@ -97,7 +90,6 @@ def spectrum(
     from ..spectrum.measured_curve import read_measured_curve
     from ..spectrum.overlay import overlay, overlay_csv
     from ..spectrum.shapes import Shape
-    from .choices import isotope_labels
 
     require_choice("--shape", shape, SHAPES)
     require_choice("--signal", signal, SIGNALS)

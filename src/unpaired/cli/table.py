@@ -8,9 +8,11 @@ from typing import Annotated
 
 import typer
 
+from .choices import Results
+
 
 def table(
-    results: Annotated[list[Path], typer.Argument(metavar="RESULT...", help="Folders that runs left.")],
+    results: Results,
     of: Annotated[str, typer.Option("--of", help="Which table: couplings, states, flags, ...")] = "couplings",
     format: Annotated[str | None, typer.Option(help="csv, markdown, json or parquet.")] = None,
     output: Annotated[Path | None, typer.Option(help="File to write; its ending tells the format.")] = None,
