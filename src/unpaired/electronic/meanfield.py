@@ -41,9 +41,9 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
     else:
         field.max_memory = EXACT_INTEGRALS_MB
     if solvent is not None:
-        field = field.PCM()
-        field.with_solvent.method = "IEF-PCM"
-        field.with_solvent.eps = solvent.dielectric
+        from .continuum import Continuum
+
+        field = field.PCM(Continuum(mole, solvent.dielectric))
     if level.is_kohn_sham and settings.start_grid_level is not None:
         field = staged(field, settings.start_grid_level)
     field.conv_tol = settings.energy_tolerance_Eh
