@@ -11,6 +11,7 @@ from unpaired.electronic import cost
 from unpaired.electronic.meanfield import mean_field
 from unpaired.electronic.mole import build_mole
 from unpaired.electronic.settings import settings
+from unpaired.electronic.sizes import sizes
 from unpaired.level import Level
 from unpaired.molecule import Molecule
 from unpaired.point import Point
@@ -29,7 +30,7 @@ CHAIN = Molecule(
 def test_counts_are_those_of_the_calculation():
     level = Level("UKS", "pcH-1", "B3LYP")
     point = Point(FORMYL, level)
-    counted = cost.sizes(point, settings(level))
+    counted = sizes(point, settings(level))
     mole = build_mole(point)
     field = mean_field(mole, level, None, settings(level))
     field.grids.build()
@@ -47,7 +48,7 @@ def test_share_of_functions_on_the_grid_is_near_the_truth():
     field = mean_field(mole, level, None, settings(level))
     blocks = field._numint.blocks(mole, field.grids, "GGA").blocks
     true = sum(b.functions.size * (b.stop - b.start) for b in blocks) / (mole.nao * blocks[-1].stop)
-    assert cost.sizes(point, settings(level)).share == pytest.approx(true, rel=0.2)
+    assert sizes(point, settings(level)).share == pytest.approx(true, rel=0.2)
 
 
 @pytest.mark.parametrize("accuracy", ["quick", "standard", "reference"])

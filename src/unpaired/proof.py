@@ -9,9 +9,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .constants import BOHR_ANGSTROM, HARTREE_KJ_MOL
-from .electronic.cost import basis_functions
 from .electronic.hessian import analytic_hessian, difference_hessian, hessian_product
 from .electronic.settings import Settings
+from .electronic.sizes import basis_functions
 from .electronic.surface import Surface
 from .errors import ConvergenceError
 from .flag import Flag

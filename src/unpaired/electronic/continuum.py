@@ -13,6 +13,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 from pyscf import df, gto, lib
+from pyscf.dft import gen_grid
 from pyscf.solvent import pcm
 from scipy import linalg
 
@@ -39,6 +40,12 @@ class Continuum(pcm.PCM):  # type: ignore[misc]
         super().build(ng)
         self._factors = linalg.lu_factor(self._intermediates["K"])
         self._potentials = self._kept_potentials()
+
+    def surface_points(self) -> int:
+        """How many points the surface has, without its equations."""
+        radii = self.vdw_scale * pcm.modified_Bondi + self.r_probe / pcm.radii.BOHR
+        per_sphere = gen_grid.LEBEDEV_ORDER[self.lebedev_order]
+        return len(pcm.gen_surface(self.mol, rad=radii, ng=per_sphere)["charge_exp"])
 
     def reset(self, mol: Any = None) -> Continuum:
         """Forget the surface, for another geometry."""
