@@ -99,11 +99,12 @@ def test_too_little_memory_is_refused_with_what_to_change(folder: Path, capsys, 
 
 def test_check_says_what_would_run_and_runs_nothing(folder: Path, capsys) -> None:
     assert unpaired("check", "h.yaml") == 0
-    head, first, second, last = capsys.readouterr().out.splitlines()
+    head, first, second, total, how = capsys.readouterr().out.splitlines()
     assert head.split()[:4] == ["radical", "level", "atoms", "electrons"]
     assert first.split()[:7] == ["hydrogen", "UHF/pcH-1", "1", "1", "0", "2", "10"]
     assert second.split()[1] == "ROHF/pcH-1"
-    assert last.startswith("2 points")
+    assert total.startswith("2 points")
+    assert how.startswith("times: from a multiplication of matrices timed just now")
     assert not (folder / "results").exists()
 
 

@@ -54,8 +54,8 @@ def forecast_report(recipes: Sequence[Recipe]) -> str:
             )
     text = layout(head, lines, left=2)
     text += f"{len(lines)} points, about {total_s:.0f} s on {machine.cores()} cores\n"
-    text += "times: from a multiplication of matrices timed just now; a level whose first answer looks doubtful is "
-    text += "started anew from other places, which can take several times as long\n"
+    text += "times: from a multiplication of matrices timed just now; a level whose first answer is doubtful "
+    text += "tries other starts and can take several times as long\n"
     rough = [planned.recipe.radical for planned in plans if planned.recipe.relax]
     if rough:
         text += f"relaxed first, which is not in these times: {', '.join(rough)}\n"
