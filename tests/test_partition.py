@@ -8,6 +8,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from unpaired.constants import BOHR_ANGSTROM, MHZ_PER_MT
+from unpaired.diagnostics import parts_flags
 from unpaired.electronic.integrals import minimal_basis
 from unpaired.electronic.mole import build_mole
 from unpaired.electronic.solve import solve
@@ -275,3 +276,18 @@ def test_the_nitrogen_tensor_of_a_nitroxide():
     row = studied(dimethyl_nitroxide)[2].atoms[0]
     found = [row[f"t_{place}_MHz"] for place in (1, 2, 3)]
     assert found == pytest.approx(published - published.mean(), rel=0.15)
+
+
+def stretched(distance_bohr):
+    """Three hydrogen atoms in a row, one unpaired electron in all."""
+    molecule = Molecule(
+        ("H", "H", "H"), np.array([[0, 0, k * distance_bohr] for k in range(3)]), charge=0, multiplicity=2
+    )
+    return Point(molecule, Level("UHF", "pcseg-0"))
+
+
+@pytest.mark.parametrize(("distance_bohr", "codes"), [(1.8, []), (12.0, ["parts-arbitrary"])])
+def test_parts_of_a_broken_pair_are_called_arbitrary(distance_bohr, codes):
+    point = stretched(distance_bohr)
+    origin = spin_origin(point, solve(point), (), ("1H",) * 3)
+    assert [flag.code for flag in parts_flags(point, origin.weakest_pair)] == codes

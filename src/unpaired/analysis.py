@@ -47,7 +47,9 @@ def analyse(point: Point, state: State, groups: Sequence[Group], isotopes: Seque
         details={"story": list(state.story), "engine": dict(state.engine)},
     )
     add_couplings(part, point, state, groups)
-    add_origin(part, spin_origin(point, state, groups, isotopes))
+    origin = spin_origin(point, state, groups, isotopes)
+    add_origin(part, origin)
+    part.flags += diagnostics.parts_flags(point, origin.weakest_pair)
     part.flags += solutions.state_flags(point, state)
     part.flags += diagnostics.contamination_flags(state, point)
     part.flags += solutions.projection_flags(point, part.tables["couplings"])

@@ -21,6 +21,7 @@ SYMMETRY_TOLERANCE_MT = 0.02
 SYMMETRY_TOLERANCE_SHARE = 0.02
 HEAVY_CAUTION = 18
 HEAVY_BAD = 36
+WEAK_PAIR = 0.1
 
 
 def contamination(state: State, point: Point) -> float:
@@ -154,6 +155,23 @@ def restricted_flags(point: Point) -> list[Flag]:
             "note",
             "a restricted-open level shows the direct part alone, zero in a nodal plane: that is its answer and "
             "not an error, but do not compare it with measured couplings",
+            level=point.level.id,
+        )
+    ]
+
+
+def parts_flags(point: Point, weakest_pair: float | None) -> list[Flag]:
+    """An alpha orbital that hardly overlaps with its partner could as well be the unpaired one."""
+    if weakest_pair is None or weakest_pair >= WEAK_PAIR:
+        return []
+    return [
+        Flag(
+            "parts-arbitrary",
+            "caution",
+            "a pair of electrons is nearly broken (a stretched bond, or two radicals in one): which of its orbitals "
+            "counts as the unpaired one is arbitrary, so use the coupling, not its direct and polarisation parts",
+            value=weakest_pair,
+            limit=WEAK_PAIR,
             level=point.level.id,
         )
     ]

@@ -41,6 +41,8 @@ class Origin:
     populations: Rows = field(default_factory=list)
     details: dict[str, Any] = field(default_factory=dict)
     """For the record: weights of contaminants, axes of the dipolar tensors, what is missing and why."""
+    weakest_pair: float | None = None
+    """Smallest overlap of an alpha orbital with its beta partner; None where all are equal by construction."""
 
 
 def spin_origin(
@@ -56,6 +58,8 @@ def spin_origin(
     if point.level.scf == "UHF":
         add_projection(found, nuclei, pairs, state)
     add_parts(found, nuclei, pairs, state, density, point.level.is_unrestricted)
+    if point.level.is_unrestricted and len(pairs.overlaps):
+        found.weakest_pair = float(pairs.overlaps[-1])
     try:
         minimal = minimal_basis(point)
         pi = pi_functions(point.molecule.coordinates_bohr, minimal)
