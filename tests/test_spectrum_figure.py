@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import io
+from dataclasses import replace
 from itertools import combinations
 
 import numpy as np
@@ -45,6 +46,13 @@ def plot(*systems: SpinSystem, fitted: bool = False, width_mT: float = 0.05) -> 
     if fitted:
         fit = overlay(curve, MeasuredCurve("field_mT", curve.position + 0.4, 7 * curve.signal, 0, ""))
     return spectrum_figure(lines, curve, lines.sweep, Caption.of(lines, lines.sweep, width_mT), fit)
+
+
+def test_a_level_that_must_not_be_used_is_called_so_in_the_plot() -> None:
+    doubtful = replace(METHYL, provenance={"findings": ["contaminated (bad)", "basis-at-nucleus (note)"]})
+    texts = [text.get_text() for text in plot(doubtful).findobj(Text)]
+    assert any(text.endswith("not to be relied on: contaminated (bad)") for text in texts)
+    assert not any("relied on" in text.get_text() for text in plot(METHYL).findobj(Text))
 
 
 @pytest.mark.parametrize(

@@ -55,7 +55,13 @@ def density(
         record.molecule, plane.replace(" ", "").split(",") if plane is not None else None
     )
     found = spin.density_in_plane(*spin.stored_state(record, result, name), chosen)
-    write_atomically(output, density_figure(found, record.molecule, title, ending[1:]))
+    bad = dict.fromkeys(
+        row["code"]
+        for row in record.rows("flags")
+        if row["severity"] == "bad" and row["level"] in (None, name)
+    )
+    heading = f"{title}\nnot to be relied on: {', '.join(bad)}" if bad else title
+    write_atomically(output, density_figure(found, record.molecule, heading, ending[1:]))
     typer.echo(
         f"{title}: spin density from {found.values_au.min():+.3g} to {found.values_au.max():+.3g} bohr^-3, "
         f"written to {output}"

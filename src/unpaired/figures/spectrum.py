@@ -40,10 +40,15 @@ class Caption:
 
     @classmethod
     def of(cls, lines: Lines, sweep: Sweep, width_mT: float) -> Caption:
-        """Radicals and levels; experiment, kind of coupling, and g with its source."""
+        """Radicals and levels; experiment, kind of coupling, g with its source, and findings that forbid the use."""
         names = dict.fromkeys(f"{system.radical} ({system.level})" for system in lines.systems)
         kinds = dict.fromkeys(system.coupling_kind for system in lines.systems)
         sources = dict.fromkeys(f"g = {s.g_iso:.5f}: {s.g_source}" for s in lines.systems)
+        bad = dict.fromkeys(
+            finding for system in lines.systems for finding in system.provenance.get("findings", ())
+            if finding.endswith("(bad)")
+        )  # fmt: skip
+        warning = wrap(f"not to be relied on: {', '.join(bad)}", SUBTITLE_LETTERS) if bad else []
         fixed = (
             f"{sweep.frequency_MHz / 1000:g} GHz"
             if sweep.frequency_MHz is not None
@@ -55,6 +60,7 @@ class Caption:
                 [
                     f"{fixed}, peak-to-peak width {width_mT:g} mT, {' and '.join(kinds)} couplings",
                     *(line for source in sources for line in wrap(source, SUBTITLE_LETTERS)),
+                    *warning,
                 ]
             ),
             width_mT=width_mT,
