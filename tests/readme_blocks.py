@@ -1,13 +1,16 @@
 """Re-make the parts of README.md that commands print.
 
-    python tests/readme_blocks.py columns demo
+    python tests/readme_blocks.py columns demo measured
 
 `columns` takes the registry, and a test compares it. `demo` runs the README's demo recipes afresh and writes what
 they print; its times differ from run to run, so that no test compares it: run this after numbers have changed.
+`measured` holds the results in the folder `results` (or the one that UNPAIRED_RESULTS names) against measured
+couplings: run `unpaired run recipes/*.yaml` before it.
 """
 
 from __future__ import annotations
 
+import os
 import subprocess
 import sys
 import tempfile
@@ -33,7 +36,19 @@ def demo() -> str:
     return f"```\n{printed.replace(place, 'results').rstrip()}\n```\n"
 
 
-MAKERS = {"columns": columns.markdown, "demo": demo}
+def measured() -> str:
+    """Computed against measured couplings of every finished recipe."""
+    results = Path(os.environ.get("UNPAIRED_RESULTS", ROOT / "results"))
+    folders = sorted(str(record.parent) for record in results.glob("*/record.json"))
+    return subprocess.run(
+        [sys.executable, str(ROOT / "tests/benchmarks/against_measured.py"), *folders],
+        check=True,
+        capture_output=True,
+        text=True,
+    ).stdout
+
+
+MAKERS = {"columns": columns.markdown, "demo": demo, "measured": measured}
 
 
 def replace(text: str, name: str, content: str) -> str:

@@ -9,6 +9,7 @@ as soon as one of them no longer misses.
 from __future__ import annotations
 
 import dataclasses
+import re
 from functools import cache
 from pathlib import Path
 
@@ -26,12 +27,14 @@ ROOT = Path(__file__).parent.parent
 RADICALS = (
     "carbon-dioxide-anion",
     "difluoride-anion",
+    "dihydrogen-cation",
     "ethyl",
     "fluoromethyl",
     "formaldehyde-cation",
     "formyl",
     "hydrazine-cation",
     "nitrogen-dioxide",
+    "silicon-boride",
     "vinyl",
 )
 NO_INVERSION = "the radical inverts fast, which a static structure does not contain"
@@ -42,6 +45,11 @@ MISSES = {
     ("fluoromethyl", "H3"): NO_INVERSION,
     ("hydrazine-cation", "H3"): NO_INVERSION,
     ("hydrazine-cation", "N1"): NO_INVERSION,
+    (
+        "silicon-boride",
+        "B2",
+    ): "4.21 against 3.52 mT: too much s character; which part of it is the functional and which "
+    "the neon matrix was not taken apart",
     ("vinyl", "H3"): NO_INVERSION,
     ("vinyl", "H5"): NO_INVERSION,
     ("vinyl", "C2"): "a small difference of direct and polarisation parts",
@@ -77,7 +85,13 @@ def test_a_measured_coupling_is_hit(name: str, place: int) -> None:
 
 @pytest.mark.parametrize("path", sorted((ROOT / "molecules").glob("*.xyz")), ids=lambda path: path.stem)
 def test_every_shipped_structure_says_how_it_was_made(path: Path) -> None:
-    assert "B3LYP/pcseg-1" in read_xyz(path).comment
+    assert re.search("B3LYP/pcseg-[01]", read_xyz(path).comment)
+
+
+@pytest.mark.parametrize("path", sorted((ROOT / "molecules").glob("*.xyz")), ids=lambda path: path.stem)
+def test_every_shipped_structure_can_be_made_again(path: Path) -> None:
+    """By `unpaired structure molecules/drawn/*.yaml`; the demo's are candidates of an invented case."""
+    assert path.stem.startswith("demo-") or (ROOT / "molecules/drawn" / f"{path.stem}.yaml").exists()
 
 
 @pytest.mark.parametrize(
@@ -94,9 +108,9 @@ def test_every_drawing_can_be_read_and_has_the_atoms_of_its_structure(path: Path
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize("name", ["formyl", "amidogen"])
+@pytest.mark.parametrize("name", ["formyl", "amidogen", "trifluoromethyl"])
 def test_another_random_start_ends_in_the_shipped_minimum(name: str) -> None:
-    """To 1e-5 Eh, as the project asks."""
+    """To 1e-5 Eh, as the project asks. CF3 turned in space changes by as much on a coarser final grid."""
     settled = settle(load_recipe(ROOT / "molecules/drawn" / f"{name}.yaml"), seed=7)
     shipped = read_xyz(ROOT / "molecules" / f"{name}.xyz")
     energy = float(shipped.comment.split(" Eh")[0].split()[-1])

@@ -7,7 +7,7 @@ from unpaired.constants import BOHR_ANGSTROM
 from unpaired.electronic.surface import Surface
 from unpaired.level import Level
 from unpaired.molecule import Molecule
-from unpaired.proof import curvature_flags, equal_minima_flags, jahn_teller
+from unpaired.proof import Model, curvature_flags, equal_minima_flags, jahn_teller
 from unpaired.settled import Conformer
 
 BENT = [("N", 0, 0, 0), ("H", 1.0, 0.1, 0), ("H", -0.3, 0.96, 0)]
@@ -66,3 +66,12 @@ def test_a_pyramid_that_inverts_is_no_jahn_teller_case() -> None:
     one = conformer([("N", 0, 0, 0), *[("H", *position) for position in ring]], charge=1, order=6)
     surface = Surface(one.molecule, Level("UKS", "pcseg-0", "B3LYP"))
     assert jahn_teller(surface, one) is None
+
+
+def test_a_model_hessian_turns_with_the_structure() -> None:
+    """A quarter turn about z takes the stiff direction x to y."""
+    coordinates = np.array([[0.0, 0, 0], [1, 0, 0], [0, 2, 0], [0, 0, 3]])
+    quarter = np.array([[0.0, -1, 0], [1, 0, 0], [0, 0, 1]])
+    model = Model(coordinates, np.diag([3.0, 2, 1] * 4))
+    turned = model.at(coordinates @ quarter.T + 5.0)
+    np.testing.assert_allclose(turned, np.diag([2.0, 3, 1] * 4), atol=1e-12)

@@ -9,10 +9,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .constants import BOHR_ANGSTROM, HARTREE_KJ_MOL
-from .electronic.hessian import analytic_hessian, difference_hessian, hessian_product
+from .electronic.hessian import analytic_hessian, difference_hessian, forward_hessian, forward_product
 from .electronic.settings import Settings
 from .electronic.sizes import basis_functions
-from .electronic.surface import Surface
+from .electronic.surface import CURVATURE_GRID, Surface
 from .errors import ConvergenceError
 from .flag import Flag
 from .point import Point
@@ -26,10 +26,10 @@ Floats = NDArray[np.float64]
 ROUGH_BASIS = "pcseg-0"
 ROUGH = Settings("def2-universal-jkfit", 0, 1e-7, 1e-4)
 """Basis set and settings of what only has to be roughly right: first relaxations, model Hessians."""
-FULL_HESSIAN_FUNCTIONS = 75
+FULL_HESSIAN_FUNCTIONS = 60
 """Up to this many basis functions the full analytic Hessian is the cheapest proof."""
 MODEL_HESSIAN_FUNCTIONS = 110
-"""Up to this many functions in ROUGH_BASIS its analytic Hessian is worth its time as a model."""
+"""Up to this many functions in ROUGH_BASIS its Hessian is worth its time as a model."""
 CONVERGED_CM = 100.0
 """An iterated lowest mode counts if its residual is below this."""
 JAHN_TELLER_MAX_ANGSTROM = 0.12
@@ -51,20 +51,36 @@ class Curvature:
     story: str
 
 
-def curvature_of(surface: Surface, coordinates_bohr: Floats) -> Curvature:
+@dataclass(frozen=True, eq=False)
+class Model:
+    """A rough Hessian and the structure that it belongs to."""
+
+    coordinates_bohr: Floats
+    hessian: Floats
+
+    def at(self, coordinates_bohr: Floats) -> Floats:
+        """The Hessian turned as the structure has turned since (best rotation of all nuclei)."""
+        from scipy.spatial.transform import Rotation
+
+        centred = [x - x.mean(axis=0) for x in (coordinates_bohr, self.coordinates_bohr)]
+        turn = np.kron(np.eye(len(coordinates_bohr)), Rotation.align_vectors(*centred)[0].as_matrix())
+        return np.asarray(turn @ self.hessian @ turn.T)
+
+
+def curvature_of(surface: Surface, coordinates_bohr: Floats, model: Model | None = None) -> Curvature:
     """The lowest mode of a structure (atoms, 3): from the full Hessian for small molecules, else by iteration.
 
     The iteration multiplies the Hessian by directions (gradient differences) and is led by the Hessian of a
-    smaller basis set.
+    smaller basis set: that of `model`, or one made here.
     """
     elements = surface.molecule.elements
     if len(elements) == 1:
         return Curvature(True, None, None, 0.0, "an atom has no vibrations")
     masses = masses_u(elements)
-    molecule = surface.molecule.moved(coordinates_bohr)
-    functions = basis_functions(Point(molecule, surface.level))
-    if functions <= FULL_HESSIAN_FUNCTIONS or len(elements) <= 3:
-        hessian = analytic_hessian(surface, coordinates_bohr)
+    surface = surface.on_grid(CURVATURE_GRID)
+    if not is_large(surface):
+        # PySCF's second derivatives of a continuum take longer than all gradient differences together
+        hessian = analytic_hessian(surface, coordinates_bohr) if surface.solvent is None else None
         how = "full Hessian"
         if hessian is None:
             hessian, how = difference_hessian(surface, coordinates_bohr), "Hessian by gradient differences"
@@ -77,8 +93,10 @@ def curvature_of(surface: Surface, coordinates_bohr: Floats) -> Curvature:
             modes.zero_point_Eh,
             f"lowest mode {wavenumber:.0f} cm^-1 ({how})",
         )
-    model, name = _model_hessian(surface, coordinates_bohr)
-    found = lowest_mode(hessian_product(surface, coordinates_bohr), model, coordinates_bohr, masses)
+    model = model or model_hessian(surface, coordinates_bohr)
+    leading = 0.5 * np.eye(coordinates_bohr.size) if model is None else model.at(coordinates_bohr)
+    name = "no model" if model is None else f"the Hessian in {ROUGH_BASIS}"
+    found = lowest_mode(forward_product(surface, coordinates_bohr), leading, coordinates_bohr, masses)
     # some mode lies within the residual of ours: it must not reach below zero
     clear = found.residual_cm <= CONVERGED_CM and found.wavenumber_cm >= max(FLAT_CM, found.residual_cm)
     # A negative curvature along any direction proves a saddle, converged or not.
@@ -88,21 +106,28 @@ def curvature_of(surface: Surface, coordinates_bohr: Floats) -> Curvature:
         found.wavenumber_cm,
         found.displacement,
         None,
-        f"lowest mode {found.wavenumber_cm:.0f} cm^-1 (iterated on {2 * found.products} gradients, led by "
+        f"lowest mode {found.wavenumber_cm:.0f} cm^-1 (iterated on {found.products + 1} gradients, led by "
         f"{name}; residual {found.residual_cm:.0f} cm^-1)",
     )
 
 
-def _model_hessian(surface: Surface, coordinates_bohr: Floats) -> tuple[Floats, str]:
-    """A cheap Hessian that knows which directions are soft, and its name."""
+def is_large(surface: Surface) -> bool:
+    """True if a full Hessian costs more than a few gradients led by a model."""
+    functions = basis_functions(Point(surface.molecule, surface.level))
+    return functions > FULL_HESSIAN_FUNCTIONS and len(surface.molecule.elements) > 3
+
+
+def model_hessian(surface: Surface, coordinates_bohr: Floats) -> Model | None:
+    """A cheap Hessian that knows which directions are soft: gas phase, ROUGH_BASIS; None if it is not cheap."""
     molecule = surface.molecule.moved(coordinates_bohr)
     level = replace(surface.level, basis=ROUGH_BASIS, name=None)
-    if basis_functions(Point(molecule, level)) <= MODEL_HESSIAN_FUNCTIONS:
-        rough = Surface(molecule, level, surface.solvent, None, ROUGH)
-        hessian = analytic_hessian(rough, coordinates_bohr)
-        if hessian is not None:
-            return hessian, f"the Hessian in {ROUGH_BASIS}"
-    return 0.5 * np.eye(coordinates_bohr.size), "no model"
+    if basis_functions(Point(molecule, level)) > MODEL_HESSIAN_FUNCTIONS:
+        return None
+    rough = Surface(molecule, level, None, surface.folder, ROUGH)
+    try:
+        return Model(coordinates_bohr, forward_hessian(rough, coordinates_bohr))
+    except ConvergenceError:
+        return None
 
 
 def conformer_of(surface: Surface, coordinates_bohr: Floats, energy_Eh: float, found: Curvature) -> Conformer:
@@ -176,14 +201,14 @@ def jahn_teller(surface: Surface, lowest: Conformer) -> tuple[Flag, str] | None:
     centre = symmetrised(elements, angstrom, *wide)
     way = (angstrom - centre) / BOHR_ANGSTROM
     try:
-        energy, gradient = surface(centre / BOHR_ANGSTROM)
+        gradient = surface(centre / BOHR_ANGSTROM)[1]
     except ConvergenceError:
         return None
     slope = float((gradient * way).sum() / np.linalg.norm(way))
     if abs(slope) < JAHN_TELLER_GRADIENT:
         return None
     copies = len(wider) // lowest.order
-    depth = (energy - lowest.energy_Eh) * HARTREE_KJ_MOL
+    depth = (surface.final_energy_Eh(centre / BOHR_ANGSTROM) - lowest.energy_Eh) * HARTREE_KJ_MOL
     advice = (
         f"one of {copies} equal minima that interconvert, {depth:.1f} kJ/mol below the symmetric structure: a "
         "spectrum shows the mean; name the nuclei that become equal under groups:"

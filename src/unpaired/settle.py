@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from .constants import BOHR_ANGSTROM, HARTREE_KJ_MOL
 from .electronic.relax import LOOSE, TIGHT, Relaxed, relax
-from .electronic.surface import Report, Surface
+from .electronic.surface import FINAL_GRID, Report, Surface
 from .errors import CalculationError, ConvergenceError
 from .level import Level
 from .molecule import Molecule
@@ -21,11 +21,14 @@ from .proof import (
     ROUGH,
     ROUGH_BASIS,
     Curvature,
+    Model,
     conformer_of,
     curvature_flags,
     curvature_of,
     equal_minima_flags,
+    is_large,
     jahn_teller,
+    model_hessian,
 )
 from .recipe.levels import DEFAULT_RELAX
 from .recipe.recipe import Recipe
@@ -106,12 +109,13 @@ def prove(recipe: Recipe, report: Report | None = None, folder: Path | None = No
     assert recipe.molecule is not None
     work = _work(recipe, recipe.molecule, report, folder)
     coordinates = recipe.molecule.coordinates_bohr
-    energy, gradient = work.surface(coordinates)
+    gradient = work.surface(coordinates)[1]
     work.story.append(
         f"{work.level.id}: largest gradient {abs(gradient).max():.1e} Eh/bohr "
         f"({'stationary' if abs(gradient).max() < 1e-3 else 'not relaxed at this level'})"
     )
-    conformer, _ = _proven(work, Relaxed(coordinates, energy, float(abs(gradient).max()), 1))
+    energy = work.surface.final_energy_Eh(coordinates)
+    conformer, _ = _proven(work, Relaxed(coordinates, energy, float(abs(gradient).max()), 1), None)
     note = f"{unsettled(recipe).note}; at {work.level.id} {_in_words(conformer)}"
     return _settled(work, [conformer], note, None)
 
@@ -191,15 +195,13 @@ def _relaxed(work: _Work, begin: Sequence[Floats], origin: str, drawing: Drawing
     found: list[Conformer] = []
     for place, coordinates in enumerate(begin, start=1):
         stage = f"relax {place}/{len(begin)}"
-        started = time.perf_counter()
         try:
             _in_a_stable_state(work, coordinates)
-            end = relax(work.elements, coordinates, work.surface, TIGHT, work.report, stage)
+            model = _model(work, coordinates)
+            end = _stationary(work, coordinates, stage, model)
         except CalculationError as error:
             work.story.append(f"start {place}: {error.message}")
             continue
-        finally:
-            work.timed("relaxation", started)
         work.story.append(
             f"start {place}: relaxed in {end.steps} steps to {end.energy_Eh:.6f} Eh "
             f"(largest gradient {end.gradient_max:.0e} Eh/bohr)"
@@ -210,7 +212,7 @@ def _relaxed(work: _Work, begin: Sequence[Floats], origin: str, drawing: Drawing
         if found and (end.energy_Eh - found[0].energy_Eh) * HARTREE_KJ_MOL > WINDOW_KJ_MOL:
             work.story.append(f"start {place}: more than {WINDOW_KJ_MOL:.0f} kJ/mol too high")
             continue
-        conformer = _downhill(work, end, stage)
+        conformer = _downhill(work, end, stage, model)
         if not _known(work, conformer, found):
             found.append(conformer)
             found.sort(key=lambda one: one.energy_Eh)
@@ -224,7 +226,7 @@ def _relaxed(work: _Work, begin: Sequence[Floats], origin: str, drawing: Drawing
     where = f"in {work.recipe.solvent.name}" if work.recipe.solvent else "gas phase"
     note = (
         f"{work.recipe.radical}, relaxed at {work.level.id} (density fitting, grid "
-        f"{work.surface.settings.grid_level}, {where}) {origin}, {kept[0].energy_Eh:.7f} Eh, "
+        f"{work.surface.settings.grid_level}, energy on grid {FINAL_GRID}, {where}) {origin}, {kept[0].energy_Eh:.7f} Eh, "
         f"{_in_words(kept[0])}"
     )
     return _settled(work, kept, note, drawing)
@@ -248,14 +250,34 @@ def _known(work: _Work, one: Relaxed | Conformer, found: Sequence[Conformer]) ->
     )
 
 
-def _downhill(work: _Work, end: Relaxed, stage: str) -> Conformer:
-    """Prove a stationary structure; follow a negative mode and relax again until it is a minimum."""
+def _model(work: _Work, coordinates: Floats) -> Model | None:
+    """A Hessian in a small basis set, for the steps and for the proof, where these are dear."""
+    if not is_large(work.surface):
+        return None
+    started = time.perf_counter()
+    if work.report is not None:
+        work.report("model Hessian", 0, np.nan, np.nan)
+    model = model_hessian(work.surface, coordinates)
+    work.timed("model Hessian", started)
+    return model
+
+
+def _stationary(work: _Work, start: Floats, stage: str, model: Model | None = None) -> Relaxed:
+    """A stationary structure, its symmetry made exact, with its energy on the final grid."""
+    hessian = None if model is None else model.hessian
+    started = time.perf_counter()
+    end = relax(work.elements, start, work.surface, TIGHT, work.report, stage, hessian=hessian)
     end = _as_symmetric_as_it_is(work, end)
-    conformer, mode = _proven(work, end)
+    work.timed("relaxation", started)
+    return replace(end, energy_Eh=work.surface.final_energy_Eh(end.coordinates_bohr))
+
+
+def _downhill(work: _Work, end: Relaxed, stage: str, model: Model | None) -> Conformer:
+    """Prove a stationary structure; follow a negative mode and relax again until it is a minimum."""
+    conformer, mode = _proven(work, end, model)
     for turn in range(ROUNDS):
         if conformer.minimum is not False or mode is None or conformer.lowest_mode_cm is None:
             break
-        started = time.perf_counter()
         work.story.append(
             f"mode at {-conformer.lowest_mode_cm:.0f}i cm^-1: a saddle, followed downhill from "
             f"{end.energy_Eh:.6f} Eh"
@@ -263,10 +285,9 @@ def _downhill(work: _Work, end: Relaxed, stage: str) -> Conformer:
         reach = DOWNHILL_ANGSTROM[min(turn, 1)] / BOHR_ANGSTROM / float(abs(mode).max())
         aside = [end.coordinates_bohr + sign * reach * mode for sign in (1.0, -1.0)]
         start = min(aside, key=lambda coordinates: work.surface(coordinates)[0])
-        end = relax(work.elements, start, work.surface, TIGHT, work.report, f"{stage} downhill")
-        work.timed("relaxation", started)
+        end = _stationary(work, start, f"{stage} downhill")
         work.story.append(f"relaxed again in {end.steps} steps to {end.energy_Eh:.6f} Eh")
-        conformer, mode = _proven(work, end)
+        conformer, mode = _proven(work, end, model)
     return conformer
 
 
@@ -293,13 +314,13 @@ def _as_symmetric_as_it_is(work: _Work, end: Relaxed) -> Relaxed:
     return Relaxed(exact, energy, float(abs(gradient).max()), end.steps + 1)
 
 
-def _proven(work: _Work, end: Relaxed) -> tuple[Conformer, Floats | None]:
+def _proven(work: _Work, end: Relaxed, model: Model | None) -> tuple[Conformer, Floats | None]:
     """The structure with its lowest mode, and the mode's displacement (atoms, 3)."""
     started = time.perf_counter()
     if work.report is not None:
         work.report("curvature", 0, end.energy_Eh, end.gradient_max)
     try:
-        found = curvature_of(work.surface, end.coordinates_bohr)
+        found = curvature_of(work.surface, end.coordinates_bohr, model)
     except CalculationError as error:  # the structure is worth keeping without its proof
         found = Curvature(None, None, None, None, f"curvature not checked: {error.message}")
     work.timed("curvature", started)

@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 from pyscf import df, gto, lib
 from pyscf.dft import gen_grid
 from pyscf.solvent import pcm
+from pyscf.solvent.grad.pcm import grad_nuc, grad_solver
 from scipy import linalg
 
 Array = NDArray[np.float64]
@@ -52,6 +53,31 @@ class Continuum(pcm.PCM):  # type: ignore[misc]
         self._factors = self._potentials = None
         super().reset(mol)
         return self
+
+    def grad(self, dm: Array) -> Array:
+        """Gradient (atoms, 3) of the energy of the charges for the total density matrix."""
+        return np.asarray(self._attraction(dm) + grad_nuc(self, dm) + grad_solver(self, dm))
+
+    def _attraction(self, dm: Array) -> Array:
+        """Gradient of the attraction between density and charges.
+
+        One kind of derivative integrals is enough where the library makes two: moving a charge is moving all
+        functions the other way.
+        """
+        charges, functions = self._intermediates["q_sym"], self.mol.nao
+        moved = np.zeros((3, functions))
+        dragged = np.zeros((3, len(charges)))
+        for points in _blocks(len(charges), max(1, int(BLOCK_MB * 1e6 / 24 / functions**2))):
+            surface = gto.fakemol_for_charges(
+                self.surface["grid_coords"][points], expnt=self.surface["charge_exp"][points] ** 2
+            )
+            derivative = df.incore.aux_e2(self.mol, surface, intor="int3c2e_ip1", aosym="s1")
+            felt = np.einsum("xijg,ij->xig", derivative, dm)
+            moved += felt @ charges[points]
+            dragged[:, points] = -2 * felt.sum(axis=1) * charges[points]
+        by_atom = [moved[:, first:last].sum(axis=1) for first, last in self.mol.aoslice_by_atom()[:, 2:]]
+        by_charge = [dragged[:, first:last].sum(axis=1) for first, last in self.surface["gslice_by_atom"]]
+        return np.asarray(2 * np.array(by_atom) + np.array(by_charge))
 
     def _kept_potentials(self) -> NDArray[np.float32] | None:
         """Potential of every pair of functions, shape (points, pairs), or None if there are too many.

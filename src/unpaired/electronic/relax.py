@@ -57,11 +57,13 @@ def relax(
     report: Report | None = None,
     stage: str = "relax",
     rough: bool = False,
+    hessian: Floats | None = None,
 ) -> Relaxed:
     """Walk downhill to a stationary structure (geomeTRIC, translation-rotation internal coordinates).
 
     L.-P. Wang, C. C. Song, J. Chem. Phys. 144, 214108 (2016). Raises ConvergenceError after MAX_STEPS;
-    a rough relaxation ends with the lowest structure of ROUGH_STEPS at the latest.
+    a rough relaxation ends with the lowest structure of ROUGH_STEPS at the latest. A Hessian (3 atoms, 3 atoms) of
+    the start in Eh/bohr^2, even of a smaller basis set, saves about half of the steps.
     """
     start = np.asarray(coordinates_bohr, dtype=np.float64).reshape(-1, 3)
     if len(elements) == 1:
@@ -82,6 +84,8 @@ def relax(
         convergence_drms=thresholds.displacement_rms,
         convergence_dmax=thresholds.displacement_max,
     )
+    if hessian is not None:
+        options.hess_data, options.frequency = hessian, False
     with tempfile.TemporaryDirectory(prefix="unpaired-") as scratch:
         try:
             coordinates = internal.DelocalizedInternalCoordinates(
