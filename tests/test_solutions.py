@@ -130,6 +130,7 @@ def test_an_open_shell_of_two_degenerate_orbitals_is_named_as_a_whole():
     assert solve(point(molecule("C C H H H H", shape, 0, 3))).solution.label == "b2 b3"
 
 
+@pytest.mark.slow
 def test_two_runs_agree_and_turning_the_molecule_changes_nothing():
     """Limits of the task: 1e-8 Eh between runs, 1e-6 Eh under rotation."""
     first, second = (solve(point(NITROGEN_CATION)) for _ in range(2))

@@ -14,6 +14,14 @@ Watch = Callable[[dict[str, Any]], None]
 FIRST_CYCLES = 60
 SHIFT_Eh = 0.4
 DAMPING = 0.4
+STALLED_CYCLES = 10
+STALLED_GAIN = 0.5
+"""Extrapolation is given up when its best gradient of so many iterations is not below this share of the best before:
+occupations then jump to and fro, and second order, which keeps them, is quicker."""
+
+
+class Stalled(Exception):
+    """Extrapolation does not get on."""
 
 
 @dataclass(frozen=True)
@@ -76,19 +84,50 @@ def _ladder(field: Any) -> tuple[Rung, ...]:
     )
 
 
+class _Progress:
+    """Watches an extrapolation, remembers its lowest iterate and raises Stalled where it does not get on."""
+
+    def __init__(self, outer: Watch | None) -> None:
+        self.outer = outer
+        self.gradients: list[float] = []
+        self.lowest_Eh = np.inf
+        self.orbitals: Any = None
+        self.occupations: Any = None
+
+    def __call__(self, local: dict[str, Any]) -> None:
+        if self.outer is not None:
+            self.outer(local)
+        energy = float(local["e_tot"])
+        if energy < self.lowest_Eh:
+            self.lowest_Eh = energy
+            self.orbitals, self.occupations = np.array(local["mo_coeff"]), np.array(local["mo_occ"])
+        self.gradients.append(float(local["norm_gorb"]))
+        before, lately = self.gradients[:-STALLED_CYCLES], self.gradients[-STALLED_CYCLES:]
+        if len(before) >= STALLED_CYCLES // 2 and min(lately) > STALLED_GAIN * min(before):
+            raise Stalled
+
+
 def _diis(field: Any, density: Any) -> None:
-    limit, field.max_cycle = field.max_cycle, min(field.max_cycle, FIRST_CYCLES)
+    limit, outer = field.max_cycle, field.callback
+    progress = _Progress(outer)
+    field.max_cycle, field.callback = min(limit, FIRST_CYCLES), progress
     try:
         field.kernel(dm0=density)
+    except Stalled:
+        field.converged = False
     finally:
-        field.max_cycle = limit
+        field.max_cycle, field.callback = limit, outer
+    if not field.converged and progress.orbitals is not None:
+        field.mo_coeff, field.mo_occ = progress.orbitals, progress.occupations
 
 
 def _from_last(field: Any, density: Any) -> None:
     if field.mo_coeff is None:
-        field.max_cycle, limit = 1, field.max_cycle
-        field.kernel(dm0=density)
-        field.max_cycle = limit
+        limit, field.max_cycle = field.max_cycle, 1
+        try:
+            field.kernel(dm0=density)
+        finally:
+            field.max_cycle = limit
     second_order(field, field.mo_coeff, field.mo_occ)
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from typing import Any
 
 import numpy as np
@@ -31,17 +31,29 @@ def density_from_nuclei(field: Any, name: str) -> Any:
         return field.get_init_guess(key="minao")
 
 
-def turned(orbitals: Array, occupations: Array, degrees: float = 45.0) -> Array:
-    """Density of an unrestricted solution whose alpha HOMO and LUMO are rotated into each other, shape (2, n, n)."""
-    alpha = orbitals[0].copy()
-    full, empty = np.flatnonzero(occupations[0] > 0), np.flatnonzero(occupations[0] == 0)
-    if len(full) and len(empty):
-        angle = np.deg2rad(degrees)
-        highest, lowest = alpha[:, full[-1]].copy(), alpha[:, empty[0]].copy()
-        alpha[:, full[-1]] = np.cos(angle) * highest + np.sin(angle) * lowest
-        alpha[:, empty[0]] = np.cos(angle) * lowest - np.sin(angle) * highest
-    rotated = np.stack([alpha, orbitals[1]])
+def turned(orbitals: Array, occupations: Array, alpha: float = 45.0, beta: float = 0.0) -> Array:
+    """Density of an unrestricted solution whose HOMO and LUMO are rotated into each other, shape (2, n, n).
+
+    Angles in degrees, one for each spin: opposite ones break the symmetry between the halves of a bond.
+    """
+    rotated = orbitals.copy()
+    for c, n, degrees in zip(rotated, occupations, (alpha, beta), strict=True):
+        full, empty = np.flatnonzero(n > 0), np.flatnonzero(n == 0)
+        if len(full) and len(empty):
+            angle = np.deg2rad(degrees)
+            highest, lowest = c[:, full[-1]].copy(), c[:, empty[0]].copy()
+            c[:, full[-1]] = np.cos(angle) * highest + np.sin(angle) * lowest
+            c[:, empty[0]] = np.cos(angle) * lowest - np.sin(angle) * highest
     return np.asarray((rotated * occupations[:, None, :]) @ rotated.transpose(0, 2, 1))
+
+
+def symmetrised(density: Array, species: Iterable[Array], overlap: Array) -> Array:
+    """The part of a density that mixes no two symmetry species; `species` are columns that span each."""
+    blocks = []
+    for columns in species:
+        metric = columns.T @ overlap @ columns
+        blocks.append(columns @ np.linalg.solve(metric, columns.T @ overlap))
+    return np.asarray(sum(block @ density @ block.T for block in blocks))
 
 
 def excited(occupations: Array, energies: Array, deep: int, high: int) -> Iterator[tuple[str, Array]]:

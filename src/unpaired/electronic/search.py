@@ -16,7 +16,7 @@ from .guess import density_from_nuclei, projected
 from .meanfield import mean_field
 from .mole import build_mole
 from .settings import SCOUT
-from .solutions import Explorer, Found
+from .solutions import Explorer, Found, NEAR_Eh
 from .stability import Verdict
 
 Watch = Callable[[dict[str, Any]], None]
@@ -29,9 +29,11 @@ SCOUT_SHARE = 0.67
 SCOUT_SURFACE = 9
 """Order of the spheres' grids that make the scout's continuum."""
 SMALL_ATOMS = 2
-"""Molecules up to this size are searched without being suspect: it costs little and they surprise most."""
-NEAR_Eh = 0.08
-"""Scouted solutions up to this above the lowest are sought in the point's own basis as well (2 eV)."""
+"""Molecules up to this size are searched, suspect or not: it costs little and they surprise most."""
+FEW_ATOMS = 3
+"""The search of molecules up to this size is thorough."""
+TROUBLED = frozenset({"not converged", "unstable", "contaminated", "symmetry broken"})
+"""Suspicions for which a small molecule is searched in the point's own basis after the scout's."""
 MOST = 4
 CLEARLY_STABLE_Eh = 0.03
 """A scout's lowest curvature above this settles the stability of the same state in the larger basis."""
@@ -54,7 +56,9 @@ class Outcome:
 def search(point: Point, field: Any, start: str, watch: Watch) -> Outcome:
     """Solutions of `field`, the point's mean field. Raises ConvergenceError if no start leads to one."""
     spin = point.molecule.spin
-    thorough = len(point.molecule.elements) <= SMALL_ATOMS or point.level.solution is not None
+    atoms = len(point.molecule.elements)
+    small, few = atoms <= SMALL_ATOMS, atoms <= FEW_ATOMS
+    always = (small or point.level.solution is not None) and field.mol.natm > 1 and field.mol.nelectron > 1
     own = Explorer(field)
     scout = _scout(point, field, watch)
     first = scout or own
@@ -62,14 +66,14 @@ def search(point: Point, field: Any, start: str, watch: Watch) -> Outcome:
 
     def look_around() -> None:
         if first.starts == 1:
-            first.more_starts(lambda: _other_methods(point, first.field))
+            first.more_starts(lambda: _other_methods(point, first.field), thorough=few)
 
     suspicions: tuple[str, ...] = ("not converged",)
     if not first.found:
         look_around()
     else:
         suspicions = first.suspicions(rungs, point.level.scf, spin)
-        if suspicions or (thorough and field.mol.natm > 1 and field.mol.nelectron > 1):
+        if suspicions or always:
             look_around()
     if scout is not None:
         own_rungs = _carry(scout, own, wide=point.level.solution is not None)
@@ -82,6 +86,8 @@ def search(point: Point, field: Any, start: str, watch: Watch) -> Outcome:
             own.from_density(density_from_nuclei(field, start), start)
             if not own.found:
                 own.more_starts(lambda: _other_methods(point, field))
+        elif small and TROUBLED.intersection(suspicions):
+            own.more_starts(lambda: iter(()), thorough=True)
     if not own.found:
         raise ConvergenceError("not converged: " + "; ".join(own.story))
     if not suspicions and first.starts > 1:

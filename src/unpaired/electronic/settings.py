@@ -7,7 +7,7 @@ from dataclasses import asdict, dataclass
 from ..errors import ChoiceError
 from ..level import Level
 
-ENGINE_VERSION = 2
+ENGINE_VERSION = 3
 """Raised whenever the numbers of the engine change; a stored state of another version is never served."""
 
 
