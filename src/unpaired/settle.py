@@ -41,6 +41,8 @@ Floats = NDArray[np.float64]
 
 ROUGH_WINDOW_KJ_MOL = 25.0
 """What the rough relaxation puts higher above the lowest is not relaxed further."""
+ROUGH_SAME_Eh, ROUGH_SAME_ANGSTROM = 5e-3, 0.15
+"""Structures alike after the rough relaxation: on its grid one CF3 turned in space differs by 2e-3 Eh."""
 ROUNDS = 4
 """How often a negative mode is followed."""
 DOWNHILL_ANGSTROM = (0.15, 0.3)
@@ -176,7 +178,9 @@ def _distinct(
     elements: Sequence[str], found: Sequence[tuple[float, Floats]], window_kJ_mol: float, loose: bool
 ) -> list[tuple[float, Floats]]:
     """The lowest of every shape within the window, by energy."""
-    energy_tolerance, shape_tolerance = (1e-3, 0.15) if loose else (SAME_Eh, SAME_ANGSTROM)
+    energy_tolerance, shape_tolerance = (
+        (ROUGH_SAME_Eh, ROUGH_SAME_ANGSTROM) if loose else (SAME_Eh, SAME_ANGSTROM)
+    )
     kept: list[tuple[float, Floats]] = []
     for energy, coordinates in sorted(found, key=lambda pair: pair[0]):
         if (energy - kept[0][0] if kept else 0.0) * HARTREE_KJ_MOL > window_kJ_mol:

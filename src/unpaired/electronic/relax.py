@@ -32,7 +32,7 @@ class Thresholds:
 
 
 TIGHT = Thresholds()
-LOOSE = Thresholds(1e-5, 1e-3, 2e-3, 1e-2, 2e-2)
+LOOSE = Thresholds(1e-4, 1e-3, 2e-3, 1e-2, 2e-2)
 MAX_STEPS = 150
 ROUGH_STEPS = 30
 
