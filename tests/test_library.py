@@ -14,7 +14,7 @@ from functools import cache
 from pathlib import Path
 
 import pytest
-from hits import predicted_and_measured_mT
+from hits import MISSES, predicted_and_measured_mT
 
 from unpaired.recipe.load import load_recipe
 from unpaired.result import Result
@@ -25,6 +25,7 @@ from unpaired.study import study
 
 ROOT = Path(__file__).parent.parent
 RADICALS = (
+    "beryllium-cation",
     "carbon-dioxide-anion",
     "difluoride-anion",
     "dihydrogen-cation",
@@ -32,28 +33,17 @@ RADICALS = (
     "fluoromethyl",
     "formaldehyde-cation",
     "formyl",
+    "helium-cation",
     "hydrazine-cation",
+    "hydrogen",
+    "lithium",
+    "methyl",
+    "nitrogen",
     "nitrogen-dioxide",
+    "nitroxide",
     "silicon-boride",
     "vinyl",
 )
-NO_INVERSION = "the radical inverts fast, which a static structure does not contain"
-MISSES = {
-    ("carbon-dioxide-anion", "C1"): "measured in a crystal of sodium formate; a gas-phase anion here",
-    ("difluoride-anion", "F1"): "self-interaction error: the hole of a three-electron bond is too diffuse",
-    ("fluoromethyl", "C1"): NO_INVERSION,
-    ("fluoromethyl", "H3"): NO_INVERSION,
-    ("hydrazine-cation", "H3"): NO_INVERSION,
-    ("hydrazine-cation", "N1"): NO_INVERSION,
-    (
-        "silicon-boride",
-        "B2",
-    ): "4.21 against 3.52 mT: too much s character; which part of it is the functional and which "
-    "the neon matrix was not taken apart",
-    ("vinyl", "H3"): NO_INVERSION,
-    ("vinyl", "H5"): NO_INVERSION,
-    ("vinyl", "C2"): "a small difference of direct and polarisation parts",
-}
 
 
 def _cases() -> list[object]:

@@ -13,12 +13,17 @@ import sys
 from collections import defaultdict
 from pathlib import Path
 
+sys.path.insert(0, str(Path(__file__).parent.parent))
+
+from hits import MISSES
+
 from unpaired import load_result
 
 
 def main() -> None:
     """Print the table."""
     errors: dict[str, list[float]] = defaultdict(list)
+    reasons: dict[str, list[str]] = defaultdict(list)
     print(
         "| radical | atoms | isotope | computed / mT | measured / mT | error / mT | within limit | from memory |"
     )
@@ -47,11 +52,18 @@ def main() -> None:
             within = "yes" if abs(error) <= limit else "no"
             if "for looking only" in item["source"]:
                 within = "uncertain"
+            if within == "no":
+                name = result.radical.split(" (")[0].replace(" ", "-")
+                reason = MISSES.get((name, item["atoms"][0]), "not explained")
+                reasons[reason].append(f"{result.radical} {' '.join(item['atoms'])}")
             memory = "yes" if "from memory" in item["source"] else "no"
             print(
                 f"| {result.radical} | {' '.join(item['atoms'])} | {picked[0]['isotope']} | {shown:+.3f} | "
                 f"{item['coupling_mT']:+.3f} | {error:+.3f} | {within} | {memory} |"
             )
+    print("\nWhat misses the limit, and why:\n")
+    for reason, names in reasons.items():
+        print(f"* {', '.join(names)}: {reason}")
     print("\n| isotope | couplings | mean absolute error / mT |\n| --- | --- | --- |")
     for isotope, found in sorted(errors.items()):
         print(f"| {isotope} | {len(found)} | {sum(found) / len(found):.3f} |")
