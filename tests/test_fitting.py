@@ -2,9 +2,10 @@
 
 import numpy as np
 import pytest
+import scipy.linalg
 from pyscf import df, gto, lib, scf
 
-from unpaired.electronic import fitting
+from unpaired.electronic import exchange, fitting, threeindex
 from unpaired.electronic.auxiliary import auxiliary_basis
 
 SET = {element: auxiliary_basis("def2-universal-jkfit + free s, p", element) for element in "CHO"}
@@ -53,14 +54,16 @@ def test_one_matrix_of_no_electrons(mole):
 def test_small_batches_give_the_same(mole, monkeypatch):
     dm = lib.hermi_triu(np.random.default_rng(6).normal(size=(mole.nao, mole.nao)))
     whole = fitting.Fitting(mole, SET).get_jk(dm)
-    monkeypatch.setattr(fitting, "BATCH_MB", 0.02)
+    fitting.release()
+    monkeypatch.setattr(exchange, "BATCH_MB", 0.02)
+    monkeypatch.setattr(threeindex, "CHUNK_MB", 0.02)
     for mine, expected in zip(fitting.Fitting(mole, SET).get_jk(dm), whole, strict=True):
         np.testing.assert_allclose(mine, expected, atol=1e-11)
 
 
 def test_levels_of_one_molecule_share_their_integrals(mole):
     first, second = fitting.Fitting(mole, SET).build(), fitting.Fitting(mole.copy(), SET).build()
-    assert second._cderi is first._cderi
+    assert second.integrals() is first.integrals()
 
 
 def test_a_moved_atom_gets_its_own_integrals(mole):
@@ -69,15 +72,16 @@ def test_a_moved_atom_gets_its_own_integrals(mole):
     coordinates[1, 2] += 0.1
     moved = mole.copy().set_geom_(coordinates, unit="Bohr")
     second = fitting.Fitting(moved, SET).build()
-    np.testing.assert_array_equal(second._cderi, df.DF(moved, SET).build()._cderi)
-    assert not np.allclose(first._cderi, second._cderi)
+    theirs = np.vstack(list(df.DF(moved, SET).loop()))
+    np.testing.assert_allclose(np.vstack(list(second.loop())), theirs, atol=1e-10)
+    assert not np.allclose(np.vstack(list(first.loop())), theirs)
 
 
 def test_a_scout_in_another_basis_does_not_push_out_the_integrals(mole):
     small = gto.M(atom=mole.atom, unit="Bohr", basis="sto-3g", spin=1, verbose=0)
     first = fitting.Fitting(mole, SET).build()
     fitting.Fitting(small, SET).build()
-    assert fitting.Fitting(mole.copy(), SET).build()._cderi is first._cderi
+    assert fitting.Fitting(mole.copy(), SET).build().integrals() is first.integrals()
 
 
 def test_only_the_latest_integrals_are_kept(mole):
@@ -95,3 +99,91 @@ def test_part_of_the_coulomb_operator_for_range_separated_functionals(mole):
         for mine, expected in zip(ours.get_jk(dm, omega=omega), theirs.get_jk(dm, omega=omega), strict=True):
             np.testing.assert_allclose(mine, expected, atol=1e-9)
     np.testing.assert_array_equal(ours.get_jk(dm)[1], whole[1])
+
+
+def orthonormal(mole, seed, angle=0.0):
+    """Alpha and beta orbitals of a random symmetric matrix, turned a little."""
+    overlap = mole.intor("int1e_ovlp")
+    values, vectors = np.linalg.eigh(overlap)
+    root = vectors / np.sqrt(values) @ vectors.T
+    random = np.random.default_rng(seed).normal(size=overlap.shape)
+    turn = scipy.linalg.expm(angle * (random - random.T) / len(random))
+    return root @ np.linalg.eigh(random + random.T)[1] @ turn
+
+
+def density(mole, orbitals):
+    occupations = np.zeros((2, orbitals.shape[1]))
+    occupations[0, :8] = occupations[1, :7] = 1
+    return scf.UHF(mole).make_rdm1(np.stack([orbitals] * 2), occupations)
+
+
+@pytest.mark.parametrize("angle", [0.0, 1e-4, 1e-2])
+def test_exchange_near_an_earlier_density_acts_rightly_on_occupied_orbitals(mole, angle):
+    first, second = orthonormal(mole, 9), orthonormal(mole, 9, angle)
+    ours = fitting.Fitting(mole, SET)
+    ours.get_jk(density(mole, first))
+    taken, theirs = ours.get_jk(density(mole, second))[1], df.DF(mole, SET).get_jk(density(mole, second))[1]
+    assert ours._anchor is not None
+    np.testing.assert_array_equal(ours._anchor.orbitals[0], first[:, :8])
+    np.testing.assert_allclose(taken, taken.swapaxes(1, 2), atol=1e-12)
+    for mine, expected, count in zip(taken, theirs, (8, 7), strict=True):
+        np.testing.assert_allclose(
+            mine @ second[:, :count], expected @ second[:, :count], atol=1e-9 + 1e-6 * angle
+        )
+
+
+def test_exchange_far_from_an_earlier_density_is_made_anew(mole):
+    ours = fitting.Fitting(mole, SET)
+    ours.get_jk(density(mole, orthonormal(mole, 9)))
+    second = density(mole, orthonormal(mole, 10))
+    np.testing.assert_allclose(ours.get_jk(second)[1], df.DF(mole, SET).get_jk(second)[1], atol=1e-10)
+
+
+def test_what_the_caller_does_with_a_matrix_does_not_change_the_next(mole):
+    """The library scales the exchange matrices of hybrid functionals in place."""
+    ours, dm = fitting.Fitting(mole, SET), density(mole, orthonormal(mole, 11))
+    first = ours.get_jk(dm)[1]
+    before = first.copy()
+    first *= 0.2
+    np.testing.assert_allclose(ours.get_jk(dm)[1], before, atol=1e-12)
+
+
+def test_rough_and_responding_are_single_precision_and_end(mole):
+    ours, dm = fitting.Fitting(mole, SET), np.array(density(mole, orthonormal(mole, 12)))
+    exact = ours.get_jk(dm)[1]
+    for stage in (ours.rough, ours.responding):
+        with stage():
+            single = ours.get_jk(dm)[1]
+        assert 1e-9 < np.abs(single - exact).max() < 1e-4
+        np.testing.assert_array_equal(ours.get_jk(dm)[1], exact)
+
+
+def test_forgotten_density_leaves_a_whole_matrix(mole):
+    ours, orbitals = fitting.Fitting(mole, SET), orthonormal(mole, 13, 1e-2)
+    ours.get_jk(density(mole, orthonormal(mole, 13)))
+    ours.forget()
+    dm = density(mole, orbitals)
+    np.testing.assert_allclose(ours.get_jk(dm)[1], df.DF(mole, SET).get_jk(dm)[1], atol=1e-10)
+
+
+def test_bounds_are_the_self_repulsion_of_each_pair():
+    """Largest over the directions of a pair of contracted functions; the molecule has contractions of one shell."""
+    mole = gto.M(atom="O 0 0 0; H 0 0.3 1.8", unit="Bohr", basis="pcseg-1", spin=1, verbose=0)
+    whole = mole.intor("int2e").reshape((mole.nao,) * 4)
+    exact = np.sqrt(np.abs(np.einsum("mnmn->mn", whole)))
+    bounds = threeindex.pair_bounds(mole)
+    assert np.all(bounds >= exact - 1e-9)
+    sharp = np.isclose(bounds, exact, atol=1e-9)
+    assert all(row.any() for row in sharp)
+    assert np.all(bounds <= 30 * np.maximum(exact.max(axis=1), exact.max(axis=0)))
+
+
+def test_distant_pairs_are_left_out_and_change_little():
+    atoms = "; ".join(f"H 0 0 {4.0 * k}" for k in range(5))
+    mole = gto.M(atom=atoms, unit="Bohr", basis="pcseg-0", spin=1, verbose=0)
+    shells = {"H": auxiliary_basis("def2-universal-jkfit + free s, p", "H")}
+    ours = fitting.Fitting(mole, shells)
+    assert ours.integrals().packed.shape[1] < mole.nao * (mole.nao + 1) // 2
+    dm = np.eye(mole.nao)
+    for mine, theirs in zip(ours.get_jk(dm), df.DF(mole, shells).get_jk(dm), strict=True):
+        np.testing.assert_allclose(mine, theirs, atol=1e-6)

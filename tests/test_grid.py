@@ -6,6 +6,7 @@ from numpy.typing import NDArray
 from pyscf import dft, gto, lib
 
 from unpaired.electronic import grid
+from unpaired.electronic.frame import turned_grids
 
 FUNCTIONALS = ["LDA,VWN", "PBE", "B3LYP", "TPSSh"]
 
@@ -99,3 +100,34 @@ def test_another_grid_is_not_served_the_first_ones_values(mole, points, densitie
     finer.build(with_non0tab=True)
     ours = integration.nr_uks(mole, finer, "B3LYP", densities)[1]
     assert ours == pytest.approx(dft.numint.NumInt().nr_uks(mole, finer, "B3LYP", densities)[1], abs=1e-8)
+
+
+@pytest.mark.parametrize("functional", FUNCTIONALS)
+@pytest.mark.parametrize("change", [0.0, 1e-3, 0.5])
+def test_potential_after_an_earlier_one_is_the_librarys(mole, points, densities, functional, change):
+    """A small change is added in single precision, a large one made anew."""
+    mixed = np.array(densities) * (1 + change)
+    ours = grid.GridIntegration()
+    ours.nr_uks(mole, points, functional, densities)
+    found = ours.nr_uks(mole, points, functional, mixed)
+    expected = dft.numint.NumInt().nr_uks(mole, points, functional, mixed)
+    assert found[1] == pytest.approx(expected[1], abs=1e-8)
+    np.testing.assert_allclose(found[2], expected[2], atol=1e-7)
+
+
+def test_caller_may_change_a_matrix_that_later_ones_are_made_from(mole, points, densities):
+    ours = grid.GridIntegration()
+    first = ours.nr_uks(mole, points, "PBE", densities)[2]
+    before = first.copy()
+    first *= 2
+    np.testing.assert_allclose(ours.nr_uks(mole, points, "PBE", densities)[2], before, atol=1e-12)
+
+
+@pytest.mark.parametrize("functional", FUNCTIONALS)
+def test_rough_grids_are_summed_in_single_precision(mole, densities, functional):
+    exact, single = (
+        grid.GridIntegration().nr_uks(mole, turned_grids(mole, 0, wanted), functional, densities)
+        for wanted in (False, True)
+    )
+    assert 1e-12 < np.abs(exact[2] - single[2]).max() < 1e-4
+    assert single[1] == pytest.approx(exact[1], abs=1e-4)

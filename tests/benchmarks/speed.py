@@ -24,6 +24,7 @@ from pathlib import Path
 from typing import Any, NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
 HERE = Path(__file__).parent
 DEFAULT_LEVELS = ("UHF/pcH-1", "ROHF/pcH-1", "UKS/pcH-1/B3LYP")
@@ -152,10 +153,11 @@ def floor(path: str) -> None:
     from unpaired.structures.file import read_structure
 
     seconds: dict[str, float] = defaultdict(float)
-    work: dict[str, float] = defaultdict(float)
+    work: dict[str, NDArray[np.float64]] = defaultdict(lambda: np.zeros(2))
     calls: dict[str, int] = defaultdict(int)
 
-    def watch(where: Any, name: str, stage: str, count: Callable[..., float]) -> None:
+    def watch(where: Any, name: str, stage: str, count: Callable[..., tuple[float, float]]) -> None:
+        """Add up the time of a function and its operations in double and in single precision."""
         inner = getattr(where, name)
 
         @functools.wraps(inner)
@@ -169,49 +171,76 @@ def floor(path: str) -> None:
 
         setattr(where, name, outer)
 
-    def exchange(this: Any, dm: Any, matrices: Any) -> float:
-        size, columns = matrices.shape[-1], sum(n.size for _, n in fitting.factor(dm, matrices))
-        return float(3 * len(this._cderi) * size**2 * columns)
+    def either(single: bool, flop: float) -> tuple[float, float]:
+        return (0.0, flop) if single else (flop, 0.0)
 
-    def density(blocks: Any, factors: Any, kind: str) -> float:
+    def half(integrals: Any, columns: int) -> float:
+        elements = sum(c.functions.size * c.partners.size for c in integrals.clusters)
+        return 2.0 * len(integrals.packed) * elements * columns
+
+    def whole(integrals: Any, factors: Any, kind: Any = np.float64) -> tuple[float, float]:
         columns = sum(n.size for _, n in factors)
-        return float(sum(8 * columns * b.functions.size * (b.stop - b.start) for b in blocks.blocks))
+        second = float(len(integrals.packed) * integrals.size**2 * columns)
+        return either(kind == np.float32, half(integrals, columns) + second)
 
-    def matrices(blocks: Any, potential: Any) -> float:
-        return float(sum(4 * b.functions.size**2 * (b.stop - b.start) for b in blocks.blocks))
+    def anchor(integrals: Any, orbitals: Any) -> tuple[float, float]:
+        return whole(integrals, [(c, c[0]) for c in orbitals])
 
-    rate = multiplication_rate()
+    def near(this: Any, integrals: Any, steps: Any) -> tuple[float, float]:
+        counts = [step.shape[1] for step in steps]
+        second = 8.0 * len(integrals.packed) * integrals.size * sum(n**2 for n in counts)
+        return 0.0, half(integrals, sum(counts)) + second
+
+    def density(blocks: Any, factors: Any, kind: str) -> tuple[float, float]:
+        columns = sum(n.size for _, n in factors)
+        flop = float(sum(8 * columns * b.functions.size * (b.stop - b.start) for b in blocks.blocks))
+        return either(blocks.kind == np.float32, flop)
+
+    def matrices(blocks: Any, potential: Any, kind: Any = np.float64) -> tuple[float, float]:
+        flop = float(sum(4 * b.functions.size**2 * (b.stop - b.start) for b in blocks.blocks))
+        return either(np.float32 in (blocks.kind, kind), flop)
+
+    def nothing(*_: Any) -> tuple[float, float]:
+        return 0.0, 0.0
+
+    rates = np.array([multiplication_rate(np.float64), multiplication_rate(np.float32)])
     geometry = read_structure(path)
     level = Level("UKS", "pcH-1", "B3LYP")
     point = Point(Molecule(geometry.elements, geometry.coordinates_bohr, 0, 2), level)
     mole = build_mole(point)
     field = mean_field(mole, level, None, settings(level))
-    watch(fitting.Fitting, "build", "three-index integrals", lambda this: 0.0)
-    watch(fitting.Fitting, "_coulomb", "Coulomb",
-          lambda this, dm: 4.0 * len(dm) * len(this._cderi) * this._cderi.shape[1])  # fmt: skip
-    watch(fitting.Fitting, "_exchange", "exchange", exchange)
-    watch(grid.Blocks, "__init__", "function values on grids", lambda *_: 0.0)
+    watch(fitting, "three_index", "three-index integrals", nothing)
+    watch(fitting, "coulomb", "Coulomb", lambda all_, dm: (4.0 * len(dm) * all_.packed.size, 0.0))
+    watch(fitting, "whole", "exchange, rough stage", whole)
+    watch(fitting, "anchor", "exchange, anchors", anchor)
+    watch(fitting.Anchor, "near", "exchange, near anchors", near)
+    watch(grid.Blocks, "__init__", "function values on grids", nothing)
     watch(grid, "_density", "density on grids", density)
     watch(grid, "_matrices", "potential matrices", matrices)
-    watch(grid.GridIntegration, "eval_xc_eff", "functional on grids", lambda *_: 0.0)
-    watch(type(field), "eig", "diagonalisation", lambda *_: 2 * 9.0 * mole.nao**3)
+    watch(grid.GridIntegration, "eval_xc_eff", "functional on grids", nothing)
+    watch(type(field), "eig", "diagonalisation", lambda *_: (2 * 9.0 * mole.nao**3, 0.0))
     started = time.perf_counter()
     field.kernel()
     total = time.perf_counter() - started
-    print(f"{path} UKS-B3LYP/pcH-1, {mole.nao} functions, {rate / 1e9:.1f} Gflop/s in matrix multiplication")
-    print(f"{'stage':28}{'calls':>6}{'s':>8}{'Gflop':>9}{'floor s':>9}{'ratio':>7}")
+    print(f"{path} UKS-B3LYP/pcH-1, {mole.nao} functions; matrix multiplication {rates[0] / 1e9:.1f} Gflop/s "
+          f"in double, {rates[1] / 1e9:.1f} in single precision")  # fmt: skip
+    print(f"{'stage':30}{'calls':>6}{'s':>8}{'Gflop':>9}{'single':>9}{'floor s':>9}{'ratio':>7}")
     for stage in sorted(seconds, key=lambda name: -seconds[name]):
-        least = work[stage] / rate
-        ratio = f"{seconds[stage] / least:7.1f}" if least else ""
-        print(f"{stage:28}{calls[stage]:6}{seconds[stage]:8.2f}{work[stage] / 1e9:9.1f}{least:9.2f}{ratio}")
-    least = sum(work.values()) / rate
-    print(f"{'all, with what is not listed':28}{'':6}{total:8.2f}{sum(work.values()) / 1e9:9.1f}{least:9.2f}"
-          f"{total / least:7.1f}")  # fmt: skip
+        print(f"{stage:30}{calls[stage]:6}" + _line(seconds[stage], work[stage], rates))
+    everything = np.sum(list(work.values()), axis=0)
+    print(f"{'all, with what is not listed':36}" + _line(total, everything, rates))
 
 
-def multiplication_rate() -> float:
+def _line(seconds: float, work: NDArray[np.float64], rates: NDArray[np.float64]) -> str:
+    """Time, operations in double and single precision, the time of these at the rates, and the ratio."""
+    least = float((work / rates).sum())
+    ratio = f"{seconds / least:7.1f}" if least else ""
+    return f"{seconds:8.2f}{work[0] / 1e9:9.1f}{work[1] / 1e9:9.1f}{least:9.2f}{ratio}"
+
+
+def multiplication_rate(kind: Any) -> float:
     """Flop/s of a large matrix product, best of five."""
-    left = np.random.default_rng(0).normal(size=(1500, 1500))
+    left = np.random.default_rng(0).normal(size=(1500, 1500)).astype(kind)
     times = []
     for _ in range(5):
         started = time.perf_counter()

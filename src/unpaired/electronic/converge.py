@@ -67,12 +67,17 @@ def second_order(field: Any, orbitals: Any, occupations: Any, cycles: int = 25) 
     if not second_order_is_sound(field):
         _shifted(field, field.make_rdm1(orbitals, occupations))
         return
+    from .fitting import responding
+
     newton = field.newton()
     newton.max_cycle = cycles
     newton.callback = field.callback
-    newton.kernel(orbitals, occupations)
+    with responding(field):
+        newton.kernel(orbitals, occupations)
     field.mo_coeff, field.mo_occ, field.mo_energy = newton.mo_coeff, newton.mo_occ, newton.mo_energy
     field.e_tot, field.converged = newton.e_tot, newton.converged
+    if field.converged and hasattr(field, "with_df"):
+        field.make_whole()
 
 
 def _ladder(field: Any) -> tuple[Rung, ...]:

@@ -32,18 +32,22 @@ def estimate(point: Point) -> Cost:
 def _memory_MB(size: Sizes) -> float:
     from .continuum import BLOCK_MB
     from .continuum import KEPT_MB as SURFACE_KEPT_MB
-    from .fitting import BUFFER_MB
+    from .exchange import BATCH_MB
     from .grid import KEPT_MB
+    from .threeindex import CHUNK_MB
 
     square = size.functions**2 * 8 / MB
     total = PROCESS_MB + 45 * square
     if size.fitting:
-        integrals = size.fitting * square / 2 + size.fitting**2 * 8 / MB
-        total += integrals + min(BUFFER_MB, 3 * integrals, 30 + integrals)
+        row = size.fitting * 8 / MB
+        made = row * size.pairs  # in double precision; half of it again for each order of a pair in single
+        anchor = row * size.functions * size.electrons / 2
+        total += 2.1 * made + anchor + min(3 * CHUNK_MB, 3 * made) + 2 * row * size.fitting
+        total += min(2 * BATCH_MB, 4 * anchor)
     else:
         total += size.functions**4 / MB if keeps_exact_integrals(size.functions) else 10 * square
-    for points in (size.points, size.coarse_points):
-        values = points * size.functions * size.share * 4 * 8 / MB
+    for points, bytes_each in ((size.points, 8), (size.coarse_points, 4)):
+        values = points * size.functions * size.share * 4 * bytes_each / MB
         total += min(values, KEPT_MB) + points * 60 * 8 / MB
     if not size.points:
         total += SEARCH_MB + min(SEARCH_MATRICES * square, SEARCH_LARGEST_MB)

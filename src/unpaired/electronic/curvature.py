@@ -107,17 +107,20 @@ def _response(
     field: Any, orbitals: Array, occupied: Array, response_grid: int | None
 ) -> Callable[[Array], Array]:
     """Both spins' Fock matrices respond to density changes of shape (2, vectors, functions, functions)."""
+    from .fitting import responding
+
     continuum = getattr(field, "with_solvent", None)
     bare = field if continuum is None else field.undo_solvent()
     if hasattr(bare, "xc") and response_grid is not None and response_grid < bare.grids.level:
         bare = bare.copy()
-        bare.grids = turned_grids(bare.mol, response_grid)
+        bare.grids = turned_grids(bare.mol, response_grid, single_precision=True)
     if hasattr(bare, "xc") and bare.grids.coords is None:
         bare.grids.build(with_non0tab=True)
     inner = bare.gen_response(orbitals, occupied, hermi=1, with_nlc=False)
 
     def respond(change: Array) -> Array:
-        answer = inner(np.ascontiguousarray(change))
+        with responding(bare):
+            answer = inner(np.ascontiguousarray(change))
         if continuum is not None:
             answer = answer + continuum._B_dot_x(np.ascontiguousarray(change[0] + change[1]))
         return np.asarray(answer)

@@ -47,12 +47,17 @@ def molecular_axes(charges: NDArray[np.float64], coordinates: NDArray[np.float64
     return np.array(axes)
 
 
-def turned_grids(mole: Any, level: int) -> Any:
-    """PySCF's grids of a level, each atomic grid turned into the molecule's axes."""
+def turned_grids(mole: Any, level: int, single_precision: bool = False) -> Any:
+    """PySCF's grids of a level, each atomic grid turned into the molecule's axes.
+
+    `single_precision` says that sums on it need no more than that.
+    """
     from pyscf import dft
 
     class TurnedGrids(dft.gen_grid.Grids):  # type: ignore[misc]
         """Atomic grids in molecular axes; the partition depends on distances alone."""
+
+        _keys = frozenset({"single_precision"})
 
         def gen_atomic_grids(self, mol: Any, *arguments: Any, **options: Any) -> Any:
             tables = super().gen_atomic_grids(mol, *arguments, **options)
@@ -60,5 +65,5 @@ def turned_grids(mole: Any, level: int) -> Any:
             return {symbol: (points @ axes, weights) for symbol, (points, weights) in tables.items()}
 
     grids = TurnedGrids(mole)
-    grids.level = level
+    grids.level, grids.single_precision = level, single_precision
     return grids

@@ -9,7 +9,9 @@ side by side in threads. With D = C n C^T, psi = C^T phi and weighted derivative
     rho = sum_i n_i psi_i^2,   grad rho = 2 sum_i n_i psi_i grad psi_i,   tau = sum_i n_i |grad psi_i|^2 / 2
     V = phi (w_rho/2 phi + w_grad . grad phi)^T + w_tau/4 grad phi . grad phi^T  + the transpose of all this
 
-Everything is in double precision; the one approximation is `REACH`.
+Products are in double precision where a final number depends on them. Single precision does for the grids of the
+rough stage and of responses (`frame.turned_grids`), and for what changes between potential matrices that are close to
+one another: V is linear in w. The one approximation beside is `REACH`.
 """
 
 from __future__ import annotations
@@ -35,10 +37,14 @@ KEPT_MB = 1500.0
 KEPT_GRIDS = 2
 """Grids whose values are kept: the field's own and the coarse one of a response."""
 
+NEAR = 0.1
+"""Share of a weighted potential that may change while the change is integrated in single precision."""
+
 COMPONENTS = {"LDA": 1, "GGA": 4, "MGGA": 5}
 """Density, gradient, kinetic-energy density."""
 
 Array = NDArray[np.float64]
+Values = NDArray[np.float64] | NDArray[np.float32]
 
 
 @dataclass(eq=False)
@@ -49,7 +55,7 @@ class Block:
     stop: int
     functions: NDArray[np.intp]
     """Indices of the functions that reach it."""
-    kept: Array | None
+    kept: Values | None
     """Values, then x, y, z derivatives: shape (functions, 1 or 4, points)."""
 
 
@@ -58,6 +64,9 @@ class Blocks:
 
     def __init__(self, mol: Any, grids: Any, derivative: int) -> None:
         self.mol, self.coordinates, self.derivative = mol, grids.coords, derivative
+        self.kind: Any = np.float32 if getattr(grids, "single_precision", False) else np.float64
+        self.anchor: tuple[Array, Array] | None = None
+        """A weighted potential and its matrices in double precision."""
         size = grids.weights.size
         count = -(-size // BLOCK_POINTS)
         edges = [size * k // count for k in range(count + 1)]
@@ -69,11 +78,11 @@ class Blocks:
             if room < 0:
                 block.kept = None
 
-    def values(self, block: Block) -> Array:
+    def values(self, block: Block) -> Values:
         """Shape (functions, 1 or 4, points)."""
         if block.kept is not None:
             return block.kept
-        return np.ascontiguousarray(self._evaluate(block.start, block.stop)[block.functions])
+        return np.ascontiguousarray(self._evaluate(block.start, block.stop)[block.functions], self.kind)
 
     def _evaluate(self, start: int, stop: int) -> Array:
         name = f"GTOval_sph_deriv{self.derivative}"
@@ -83,7 +92,7 @@ class Blocks:
     def _cut(self, edge: tuple[int, int]) -> Block:
         values = self._evaluate(*edge)
         functions = np.flatnonzero(np.abs(values).max(axis=(1, 2)) > REACH)
-        return Block(*edge, functions, np.ascontiguousarray(values[functions]))
+        return Block(*edge, functions, np.ascontiguousarray(values[functions], self.kind))
 
 
 class GridIntegration(dft.numint.NumInt):  # type: ignore[misc]
@@ -108,7 +117,7 @@ class GridIntegration(dft.numint.NumInt):  # type: ignore[misc]
         density = _density(blocks, factor(dms, np.asarray(dms)), kind)[0]
         energy, potential = self.eval_xc_eff(xc_code, density, deriv=1, xctype=kind, spin=1)[:2]
         electrons = (density if kind == "LDA" else density[:, 0]) * grids.weights
-        matrices = _matrices(blocks, potential.reshape(1, 2, -1, grids.weights.size) * grids.weights)[0]
+        matrices = _near_anchor(blocks, potential.reshape(2, -1, grids.weights.size) * grids.weights)
         return electrons.sum(axis=1), float(electrons.sum(axis=0) @ energy), matrices
 
     def nr_uks_fxc(
@@ -173,7 +182,7 @@ def _density(blocks: Blocks, factors: Sequence[tuple[Array, Array]], kind: str) 
     """Density of each spin: shape (pairs of factors, 2, points), or (pairs, 2, 4 or 5, points)."""
     components = COMPONENTS[kind]
     density = np.empty((len(factors) // 2, 2, components, len(blocks.coordinates)))
-    orbitals = np.ascontiguousarray(np.hstack([c for c, _ in factors]).T)
+    orbitals = np.ascontiguousarray(np.hstack([c for c, _ in factors]).T, blocks.kind)
     edges = np.cumsum([0, *(n.size for _, n in factors)])
 
     def fill(block: Block) -> None:
@@ -184,42 +193,53 @@ def _density(blocks: Blocks, factors: Sequence[tuple[Array, Array]], kind: str) 
         for k, (_, n) in enumerate(factors):
             mine = psi[edges[k] : edges[k + 1]]
             out = density[k // 2, k % 2, :, block.start : block.stop]
-            scaled = mine[:, 0] if np.all(n == 1) else mine[:, 0] * n[:, None]
+            scaled = mine[:, 0] if np.all(n == 1) else mine[:, 0] * n[:, None].astype(blocks.kind)
             np.einsum("ig,ixg->xg", scaled, mine[:, : min(components, 4)], out=out[:4])
             out[1:4] *= 2
             if components == 5:
-                np.einsum("i,ixg,ixg->g", n / 2, mine[:, 1:4], mine[:, 1:4], out=out[4])
+                np.einsum("i,ixg,ixg->g", (n / 2).astype(blocks.kind), mine[:, 1:4], mine[:, 1:4], out=out[4])
 
     side_by_side(fill, blocks.blocks)
     return density[:, :, 0] if kind == "LDA" else density
 
 
-def _matrices(blocks: Blocks, potential: Array) -> Array:
-    """Potential matrices (sets, 2, size, size) of weighted potentials (sets, 2, components, points)."""
+def _near_anchor(blocks: Blocks, potential: Array) -> Array:
+    """Potential matrices (2, size, size) of a weighted potential (2, components, points)."""
+    if blocks.anchor is not None:
+        change = potential - blocks.anchor[0]
+        if np.abs(change).sum() < NEAR * np.abs(potential).sum():
+            return np.asarray(blocks.anchor[1] + _matrices(blocks, change[None], np.float32)[0])
+    matrices = np.asarray(_matrices(blocks, potential[None])[0])
+    if blocks.kind == np.float64:
+        blocks.anchor = potential, matrices
+    return matrices.copy()
+
+
+def _matrices(blocks: Blocks, potential: Array, kind: Any = np.float64) -> Array:
+    """Potential matrices (sets, 2, size, size) of weighted potentials (sets, 2, components, points).
+
+    `kind` is the precision of the products, unless the values have less.
+    """
     size = blocks.mol.nao
     sets, _, components, points = potential.shape
     spins = 2 * sets
-    scaled = potential.reshape(spins, components, points).copy()
+    kind = np.float32 if blocks.kind == np.float32 else kind
+    scaled = potential.reshape(spins, components, points).astype(kind)
     scaled[:, 0] /= 2
     scaled[:, 4:] /= 4
 
     def add(mine: Sequence[Block]) -> Array:
         total = np.zeros((spins, size, size))
         for block in mine:
-            values = blocks.values(block)
+            values = blocks.values(block).astype(kind, copy=False)
             functions, _, width = values.shape
             w = scaled[:, :, block.start : block.stop]
-            right = np.empty((spins, functions, width))
-            work = np.empty((functions, width))
-            for k in range(spins):
-                np.multiply(values[:, 0], w[k, 0], out=right[k])
-                for x in range(1, min(4, components)):
-                    right[k] += np.multiply(values[:, x], w[k, x], out=work)
+            right = np.einsum("fxg,kxg->kfg", values[:, : min(4, components)], w[:, :4])
             product = values[:, 0] @ right.reshape(spins * functions, width).T
             product = product.reshape(functions, spins, functions).swapaxes(0, 1)
             if components == 5:
                 for k, x in itertools.product(range(spins), (1, 2, 3)):
-                    product[k] += values[:, x] @ np.multiply(values[:, x], w[k, 4], out=work).T
+                    product[k] += values[:, x] @ (values[:, x] * w[k, 4]).T
             total[:, block.functions[:, None], block.functions] += product
         return total
 

@@ -44,8 +44,8 @@ def mean_field(mole: Any, level: Level, solvent: Solvent | None, settings: Setti
         from .continuum import Continuum
 
         field = field.PCM(Continuum(mole, solvent.dielectric))
-    if level.is_kohn_sham and settings.start_grid_level is not None:
-        field = staged(field, settings.start_grid_level)
+    if settings.fitting_set is not None or (level.is_kohn_sham and settings.start_grid_level is not None):
+        field = staged(field, settings.start_grid_level if level.is_kohn_sham else None)
     field.conv_tol = settings.energy_tolerance_Eh
     field.conv_tol_grad = settings.gradient_tolerance
     field.max_cycle = settings.max_iterations

@@ -36,6 +36,8 @@ class Sizes:
     """Share of the functions that reach a block of points."""
     surface: int = 0
     """Points of the continuum's surface."""
+    pairs: int = 0
+    """Pairs of functions with fitted integrals."""
 
 
 def basis_functions(point: Point) -> int:
@@ -61,7 +63,17 @@ def sizes(point: Point, setting: Settings) -> Sizes:
             coarse = sum(len(_atomic_points(e, setting.start_grid_level)) for e in elements)
     share = _share(point) if points else 0.0
     surface = _surface_points(point) if point.solvent is not None else 0
-    return Sizes(basis_functions(point), point.molecule.electrons, fitting, points, coarse, share, surface)
+    pairs = _pairs(point) if fitting else 0
+    electrons = point.molecule.electrons
+    return Sizes(basis_functions(point), electrons, fitting, points, coarse, share, surface, pairs)
+
+
+def _pairs(point: Point) -> int:
+    from .mole import build_mole
+    from .threeindex import overlapping
+
+    kept = overlapping(build_mole(point))
+    return int(kept.sum() + len(kept)) // 2
 
 
 def _surface_points(point: Point) -> int:
