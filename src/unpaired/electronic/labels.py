@@ -13,10 +13,6 @@ Array = NDArray[np.float64]
 
 PURE = 0.98
 """Share of a symmetry species above which an orbital is called by it (all open-shell orbitals together)."""
-LOOSE_BOHR = 0.1
-"""Shapes this close to a threefold or higher axis are judged as if they had it (Jahn-Teller distortions)."""
-ANISOTROPY = 0.01
-"""Relative difference of the density's second moments about such an axis above which the state is degenerate."""
 
 
 @dataclass(frozen=True)
@@ -94,44 +90,6 @@ def state_label(mole: Any, symmetry: Symmetry, orbitals: Array, occupations: Arr
     kept = [k for k in order[:4] if abs(populations[k]) >= 0.1] or list(order[:1])
     text = " ".join(f"{mole.atom_symbol(k)}{k + 1} {populations[k]:.2f}" for k in kept)
     return Label(text, False)
-
-
-def degeneracy(mole: Any, orbitals: Array, occupations: Array) -> str:
-    """`atom`, `linear` or `Jahn-Teller` if the determinant is one of several of equal energy, else empty.
-
-    About an axis of order three or more, second moments of the electron density are equal in all directions across
-    it if the state is not degenerate (a term other than S, Sigma, A or B).
-    """
-    from pyscf.symm import geom
-
-    keep = geom.TOLERANCE
-    try:
-        geom.TOLERANCE = LOOSE_BOHR
-        group = str(geom.detect_symm(mole._atom)[0])
-    except Exception:  # a shape that cannot be placed has no axis to speak of
-        return ""
-    finally:
-        geom.TOLERANCE = keep
-    cubic = group in ("SO3", "T", "Td", "Th", "O", "Oh", "I", "Ih")
-    order = re.match(r"[CDS](\d+|oo)", group)
-    if not cubic and (order is None or (order[1] != "oo" and int(order[1]) < 3)):
-        return ""
-    density = sum((c * n) @ c.T for c, n in zip(orbitals, occupations, strict=True))
-    charges, places = mole.atom_charges(), mole.atom_coords()
-    middle = charges @ places / charges.sum()
-    with mole.with_common_origin(middle):
-        moments = np.einsum("xij,ij->x", mole.intor("int1e_rr"), density).reshape(3, 3)
-    if cubic:
-        values = np.linalg.eigvalsh(moments)
-    else:
-        nuclear = np.einsum("a,ax,ay->xy", charges, places - middle, places - middle)
-        spread, axes = np.linalg.eigh(nuclear)
-        single = 2 if spread[2] - spread[1] > spread[1] - spread[0] else 0
-        across = np.delete(axes, single, axis=1)
-        values = np.linalg.eigvalsh(across.T @ moments @ across)
-    if (values[-1] - values[0]) / np.mean(np.abs(values)) < ANISOTROPY:
-        return ""
-    return "atom" if group == "SO3" else "linear" if order is not None and order[1] == "oo" else "Jahn-Teller"
 
 
 def _share(orbital: Array, columns: Array, overlap: Array) -> float:

@@ -147,6 +147,8 @@ def _trust(scout: Explorer, own: Explorer, seen: Found) -> Callable[[Found], Ver
 
     def judge(found: Found) -> Verdict | None:
         lowest = seen.verdict.lowest_Eh
+        if own.field.mol.charge < 0:  # without diffuse functions the small basis binds an anion differently
+            return None
         if seen.stable is not True or (lowest is not None and lowest < CLEARLY_STABLE_Eh):
             return None
         apart = np.abs(scout.populations(seen) - own.populations(found)).max()

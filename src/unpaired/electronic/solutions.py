@@ -11,8 +11,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .converge import converge, second_order
+from .degeneracy import degeneracy
 from .guess import density_from_nuclei, excited, symmetrised, turned
-from .labels import degeneracy, spin_populations, state_label, symmetry_of
+from .labels import spin_populations, state_label, symmetry_of
 from .stability import Verdict, internal_stability
 
 Array = NDArray[np.float64]
@@ -232,12 +233,14 @@ class Explorer:
         )
         orbitals, occupations = found.both_spins()
         named = state_label(field.mol, self._symmetry, orbitals, occupations, self._overlap)
+        degenerate = degeneracy(field.mol, orbitals, occupations, self._overlap)
         return replace(
             found,
             label=named.text,
             by_symmetry=named.by_symmetry,
-            broken=bool(self._symmetry.species) and not named.by_symmetry,
-            degenerate=degeneracy(field.mol, orbitals, occupations),
+            # a component of a degenerate species may lie between the axes: that breaks nothing
+            broken=bool(self._symmetry.species) and not named.by_symmetry and degenerate != "Jahn-Teller",
+            degenerate=degenerate,
         )
 
     def suspicions(self, rungs: tuple[str, ...], method: str, spin: float) -> tuple[str, ...]:
