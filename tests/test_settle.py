@@ -11,7 +11,12 @@ import numpy as np
 import pytest
 
 from unpaired.constants import BOHR_ANGSTROM
-from unpaired.electronic.hessian import analytic_hessian, difference_hessian, hessian_product
+from unpaired.electronic.hessian import (
+    analytic_hessian,
+    difference_hessian,
+    forward_hessian,
+    hessian_product,
+)
 from unpaired.electronic.relax import LOOSE, ROUGH_STEPS, relax
 from unpaired.electronic.surface import Surface
 from unpaired.errors import ConvergenceError, EngineError
@@ -244,3 +249,35 @@ def test_one_electron_has_a_curvature_too() -> None:
     found = curvature_of(surface, molecule.coordinates_bohr)
     assert found.minimum is True
     assert "gradient differences" in found.story
+
+
+def test_a_hessian_with_a_negative_curvature_leads_downhill_all_the_same() -> None:
+    """A surface of three springs, its Hessian with the softest curvature turned negative: the first step goes down."""
+    minimum = np.array([[0, 0, 0], [1.9, 0, 0], [-0.4, 1.85, 0]])
+    energies = []
+
+    def surface(coordinates: np.ndarray) -> tuple[float, np.ndarray]:
+        lengths, slopes = _springs(coordinates)
+        stretched = lengths - _springs(minimum)[0]
+        energies.append(float(stretched @ stretched) / 2)
+        return energies[-1], np.tensordot(stretched, slopes, 1)
+
+    start = minimum + 0.05 * np.array([[0.0, 0, 0], [1, 1, 0], [1, 0, 0]])
+    curvatures, directions = np.linalg.eigh(forward_hessian(surface, start))
+    soft = int(np.flatnonzero(curvatures > 0.05)[0])  # beyond translations and rotations
+    curvatures[soft] *= -1
+    energies.clear()
+    wrong = (directions * curvatures) @ directions.T
+    end = relax(("N", "H", "H"), start, surface, hessian=wrong)
+    np.testing.assert_allclose(_springs(end.coordinates_bohr)[0], _springs(minimum)[0], atol=2e-3)
+    assert energies[1] < 0.1 * energies[0]
+
+
+def _springs(coordinates: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """The three distances, and their derivatives, shape (3, atoms, 3)."""
+    lengths, slopes = [], np.zeros((3, 3, 3))
+    for row, (i, j) in enumerate(((0, 1), (0, 2), (1, 2))):
+        bond = coordinates[i] - coordinates[j]
+        lengths.append(np.linalg.norm(bond))
+        slopes[row, i], slopes[row, j] = bond / lengths[-1], -bond / lengths[-1]
+    return np.array(lengths), slopes

@@ -85,7 +85,9 @@ def relax(
         convergence_dmax=thresholds.displacement_max,
     )
     if hessian is not None:
-        options.hess_data, options.frequency = hessian, False
+        values, vectors = np.linalg.eigh((hessian + hessian.T) / 2)
+        # a negative curvature would send the first step far along it (benzene cation: 80 kJ/mol uphill)
+        options.hess_data, options.frequency = (vectors * abs(values)) @ vectors.T, False
     with tempfile.TemporaryDirectory(prefix="unpaired-") as scratch:
         try:
             coordinates = internal.DelocalizedInternalCoordinates(
