@@ -1,6 +1,6 @@
 """One process of ours for the race: solves the levels given and prints what it found as one line of JSON.
 
-python tests/benchmarks/ours.py molecules/benzyl.xyz UKS/pcH-1/B3LYP [UHF/pcH-1 ...]
+python tests/benchmarks/ours.py molecules/benzyl.xyz UKS/pcH-1/B3LYP [UHF/pcH-1 UKS/pcH-1/B3LYP/quick UHF/pcH-1//quick ...]
 """
 
 import json
@@ -38,8 +38,8 @@ geometry = read_structure(path)
 molecule = Molecule(geometry.elements, geometry.coordinates_bohr, 0, 2)
 answers = []
 for text in levels:
-    scf, basis, *functional = text.split("/")
-    state = solve(Point(molecule, Level(scf, basis, functional[0] if functional else None)))
+    scf, basis, functional, accuracy = [*text.split("/"), "", ""][:4]
+    state = solve(Point(molecule, Level(scf, basis, functional or None, accuracy=accuracy or "standard")))
     answers.append(
         {
             "level": text,

@@ -2,6 +2,7 @@
 
     python tests/benchmarks/speed.py race molecules/benzyl.xyz     UKS-B3LYP/pcH-1 against plain.py, best of two
     python tests/benchmarks/speed.py levels molecules/benzyl.xyz   the three default levels against three plain scripts
+    python tests/benchmarks/speed.py settings molecules/allyl.xyz  quick, standard and reference accuracy
     python tests/benchmarks/speed.py growth                        time and memory from 190 to 455 functions
     python tests/benchmarks/speed.py floor molecules/benzyl.xyz    time of each stage over that of its multiplications
 
@@ -113,6 +114,17 @@ def levels(path: str, repeats: int = 2) -> None:
     print(f"  times less processor time: {cpu / mine.cpu_s:.2f} with stability")
 
 
+def settings(path: str) -> None:
+    """The three accuracies of the last default level, each in a process of its own."""
+    print(f"{path} {DEFAULT_LEVELS[-1]}")
+    standard = 0.0
+    for accuracy in ("standard", "quick", "reference"):
+        one = run("ours.py", path, f"{DEFAULT_LEVELS[-1]}/{accuracy}")
+        standard = standard or one.cpu_s
+        print(f"  {accuracy:10}{one.wall_s:8.1f} s  cpu {one.cpu_s:8.1f} s, {one.cpu_s / standard:6.2f} times "
+              f"that of standard, {one.peak_MiB:6.0f} MiB", flush=True)  # fmt: skip
+
+
 def growth() -> None:
     """Time against basis functions and the exponent of a power law through it."""
     sizes, walls, cpus = [], [], []
@@ -146,7 +158,7 @@ def floor(path: str) -> None:
     from unpaired.electronic import fitting, grid
     from unpaired.electronic.meanfield import mean_field
     from unpaired.electronic.mole import build_mole
-    from unpaired.electronic.settings import settings
+    from unpaired.electronic.settings import settings as settings_of
     from unpaired.level import Level
     from unpaired.molecule import Molecule
     from unpaired.point import Point
@@ -208,7 +220,7 @@ def floor(path: str) -> None:
     level = Level("UKS", "pcH-1", "B3LYP")
     point = Point(Molecule(geometry.elements, geometry.coordinates_bohr, 0, 2), level)
     mole = build_mole(point)
-    field = mean_field(mole, level, None, settings(level))
+    field = mean_field(mole, level, None, settings_of(level))
     watch(fitting, "three_index", "three-index integrals", nothing)
     watch(fitting, "coulomb", "Coulomb", lambda all_, dm: (4.0 * len(dm) * all_.packed.size, 0.0))
     watch(fitting, "whole", "exchange, rough stage", whole)
@@ -250,7 +262,9 @@ def multiplication_rate(kind: Any) -> float:
 
 
 if __name__ == "__main__":
-    tasks: dict[str, Callable[..., None]] = {"race": race, "levels": levels, "growth": growth, "floor": floor}
+    tasks: dict[str, Callable[..., None]] = {
+        "race": race, "levels": levels, "settings": settings, "growth": growth, "floor": floor,
+    }  # fmt: skip
     if len(sys.argv) < 2 or sys.argv[1] not in tasks:
         raise SystemExit(__doc__)
     tasks[sys.argv[1]](*sys.argv[2:])

@@ -42,9 +42,9 @@ class Cluster:
     def double(self, packed: Array, function: int) -> Array:
         """Integrals of one function in double precision, (rows of `packed`, partners)."""
         columns = self.columns[function]
-        taken = packed[:, columns]
+        taken = np.take(packed, columns, axis=1, mode="clip")  # quicker than an index in brackets
         taken[:, columns < 0] = 0
-        return taken
+        return np.asarray(taken)
 
 
 @dataclass(frozen=True, eq=False)
@@ -167,7 +167,7 @@ def _pairs_before(function: Any) -> Any:
 def _single(packed: Array, columns: Index) -> Single:
     found = np.empty((len(columns), len(packed), columns.shape[1]), dtype=np.float32)
     for place, mine in zip(found, columns, strict=True):
-        place[...] = packed[:, mine]
+        place[...] = np.take(packed, mine, axis=1, mode="clip")
         place[:, mine < 0] = 0
     return found
 
