@@ -5,7 +5,7 @@ made in double precision; that of a density nearby differs by a small term, for 
 this term only the product with the occupied orbitals is made, which is cheaper and is all that the energy and its
 gradient ask for (S. Manzer, P. R. Horn, N. Mardirossian, M. Head-Gordon, J. Chem. Phys. 143, 024113 (2015));
 the block between virtual orbitals stays that of the anchor. Left out altogether, as in that paper, it would act
-like a level shift and hold an SCF in an excited state (seen with butyl).
+like a level shift.
 """
 
 from __future__ import annotations
