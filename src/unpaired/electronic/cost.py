@@ -9,8 +9,8 @@ from .duration import expected_seconds
 from .settings import settings
 from .sizes import MB, PROCESS_MB, Sizes, keeps_exact_integrals, sizes
 
-SEARCH_MB, SEARCH_MATRICES, SEARCH_LARGEST_MB = 12.0, 250, 60.0
-"""What following a Hartree-Fock level downhill may add: constant, and in square matrices of the functions up to a limit."""
+SEARCH_MB = 12.0
+"""What following a Hartree-Fock level downhill adds."""
 MARGIN = 1.08
 """For what is not counted: 2569 MiB were used where 2449 are counted (nitroxide of 455 functions, UKS)."""
 SCOUT_FUNCTIONS = 0.36
@@ -56,7 +56,7 @@ def _memory_MB(size: Sizes) -> float:
     # values of the scout's functions on the coarse grid, kept in single and in double precision
     total += size.coarse_points * SCOUT_FUNCTIONS * size.functions * size.share * 4 * (4 + 8) / MB
     if not size.points:
-        total += SEARCH_MB + min(SEARCH_MATRICES * square, SEARCH_LARGEST_MB)
+        total += SEARCH_MB
     if size.surface:
         surface = size.surface**2 * 8 / MB
         potentials = min(size.surface * size.functions**2 / 2 * 4 / MB, SURFACE_KEPT_MB)

@@ -6,6 +6,7 @@ with it by measuring that rate, which takes a tenth of a second.
 
 from __future__ import annotations
 
+import itertools
 import time
 from dataclasses import replace
 from functools import cache
@@ -16,7 +17,7 @@ from ..errors import ChoiceError
 from ..molecule import Molecule
 from ..point import Point
 from .search import SCOUT_BASIS, SCOUT_FROM, SCOUT_SHARE, SMALL_ATOMS
-from .settings import SCOUT, Settings, settings
+from .settings import SCOUT, settings
 from .sizes import Sizes, basis_functions, keeps_exact_integrals, sizes
 from .threads import SEVERAL_THREADS_FROM, suited_to, thread_count
 
@@ -24,12 +25,16 @@ SLOW_RATE = 34e9
 """Flop/s of matrix multiplication of the one core on which the seconds below were measured, one thread."""
 
 # Seconds on that core, each fitted to measured stages of methyl, allyl and benzyl.
-SECONDS_START = 0.9
+SECONDS_START, FUNCTIONAL_SECONDS = 1.2, 0.4
+"""Loading the libraries, and those of density functionals."""
 SECONDS_PER_FITTED_INTEGRAL = 9.0e-8
 SECONDS_PER_EXACT_INTEGRAL = 1.1e-7
 SECONDS_PER_KEPT_INTEGRAL = 6.0e-9
 """Of exact integrals kept in memory, per iteration."""
-EXCHANGE_RATE = 18e9
+EXCHANGE_RATE, SINGLE = 18e9, 2.0
+"""Flop/s of exchange in double precision, and how many times faster single precision is."""
+WHOLE = 2
+"""Exchange matrices made in full in double precision."""
 MATRIX_SECONDS = 2.0e-6
 """Per square of the number of functions and iteration: extrapolation, diagonalisation, gradient."""
 VALUE_SECONDS = 5.0e-9
@@ -49,17 +54,21 @@ ITERATIONS = 10
 COARSE_ITERATIONS = 8
 STABILITY = 1.1
 """For the stability test beside the one calculation."""
-ALL_STARTS, SOME_STARTS, FEW_STARTS = 10.0, 2.5, 1.0
+DIATOMIC_STARTS, HARD_DIATOMIC_STARTS = 10.0, 35.0
+"""Other starts of every molecule of two atoms, and of those whose first answer is sure to be contaminated."""
+ALL_STARTS, SOME_STARTS, FEW_STARTS = 7.0, 2.5, 0.5
 """Other starts where all are expected; the middle of none and all where it is not known; where none are likely."""
-MULTIPLE_BOND_BOHR = 2.70
-"""Carbon and nitrogen nearer than this to one another share more than two electrons, and then UHF is contaminated."""
-START_SECONDS = 0.2
-"""Of one start in the scout's basis, beside its multiplications."""
+MULTIPLE_BOND_BOHR = {"CC": 2.70, "CN": 2.60, "NN": 2.40}
+"""Atoms nearer than this to one another share more than two electrons, and then UHF is contaminated."""
+START_SECONDS, FUNCTIONAL_START_SECONDS = 0.2, 0.3
+"""Of one start in the scout's basis, beside its multiplications; the second with a density functional."""
 
 
 def expected_seconds(point: Point, size: Sizes) -> float:
     """Wall time of a point in a process of its own, on this machine with all its threads."""
-    seconds = SECONDS_START + STABILITY * _seconds(size, settings(point.level)) + _search_seconds(point)
+    seconds = SECONDS_START + STABILITY * _seconds(size) + _search_seconds(point)
+    if point.level.is_kohn_sham:
+        seconds += FUNCTIONAL_SECONDS
     gain = LARGE_GAIN if size.functions >= SEVERAL_THREADS_FROM else SMALL_GAIN
     return float(seconds * SLOW_RATE / (multiplication_rate() * thread_count() ** gain))
 
@@ -69,18 +78,25 @@ def _expected_starts(point: Point) -> float:
     molecule = point.molecule
     if len(molecule.elements) == 1 or molecule.electrons == 1:
         return 0.0
+    unsaturated = _has_multiple_bond(molecule)
+    hard = point.level.scf == "UHF" and unsaturated
     if len(molecule.elements) <= SMALL_ATOMS or point.level.solution is not None:
+        return HARD_DIATOMIC_STARTS if hard else DIATOMIC_STARTS
+    if unsaturated and molecule.charge < 0:  # another orbital is near for the electron, whatever the method
         return ALL_STARTS
     if point.level.scf == "UHF":
-        return ALL_STARTS if _has_multiple_bond(molecule) else FEW_STARTS
+        return ALL_STARTS if hard else FEW_STARTS
     return SOME_STARTS if point.level.scf == "ROHF" else 0.0
 
 
 def _has_multiple_bond(molecule: Molecule) -> bool:
     places = [place for place, element in enumerate(molecule.elements) if element in ("C", "N")]
-    chosen = molecule.coordinates_bohr[places]
-    apart = np.linalg.norm(chosen[:, None] - chosen[None], axis=-1)
-    return bool((apart[np.triu_indices(len(chosen), 1)] < MULTIPLE_BOND_BOHR).any())
+    for one, other in itertools.combinations(places, 2):
+        kind = "".join(sorted(molecule.elements[one] + molecule.elements[other]))
+        apart_bohr = float(np.linalg.norm(molecule.coordinates_bohr[one] - molecule.coordinates_bohr[other]))
+        if apart_bohr < MULTIPLE_BOND_BOHR[kind]:
+            return True
+    return False
 
 
 def _search_seconds(point: Point) -> float:
@@ -95,16 +111,21 @@ def _search_seconds(point: Point) -> float:
     except ChoiceError:
         with_scout = False
     where = sizes(small, SCOUT) if with_scout else sizes(point, settings(point.level))
-    return starts * (START_SECONDS + _seconds(where, SCOUT))
+    each = FUNCTIONAL_START_SECONDS if point.level.is_kohn_sham else START_SECONDS
+    return starts * (each + _seconds(where))
 
 
-def _seconds(size: Sizes, setting: Settings) -> float:
+def _seconds(size: Sizes) -> float:
     """One calculation from start to convergence, on the core of `SLOW_RATE`."""
     n = float(size.functions)
-    iterations = ITERATIONS + (COARSE_ITERATIONS if size.coarse_points else 0)
+    iterations = ITERATIONS + (COARSE_ITERATIONS if size.fitting else 0)
     if size.fitting:
-        seconds = SECONDS_PER_FITTED_INTEGRAL * size.fitting * n**2 / 2
-        seconds += iterations * 3 * size.fitting * n**2 * size.electrons / EXCHANGE_RATE
+        seconds = SECONDS_PER_FITTED_INTEGRAL * size.fitting * size.pairs
+        half = 4.0 * size.fitting * size.pairs * size.electrons
+        outer = float(size.fitting) * n**2 * size.electrons
+        near = half + 4.0 * size.fitting * n * size.electrons**2
+        seconds += WHOLE * (half + outer) / EXCHANGE_RATE
+        seconds += (COARSE_ITERATIONS * (half + outer) + ITERATIONS * near) / (SINGLE * EXCHANGE_RATE)
     else:
         once = SECONDS_PER_EXACT_INTEGRAL * n**4 / 8
         if keeps_exact_integrals(size.functions):
