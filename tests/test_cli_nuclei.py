@@ -107,7 +107,9 @@ def test_an_unforeseen_error_is_not_hidden() -> None:
 def test_a_signal_from_the_keyboard_ends_a_command_with_130() -> None:
     """A real SIGINT to a real process, as Ctrl-C sends it."""
     code = (
-        "import time, typer\nfrom unpaired.cli import _with_exit_status\n"
+        "import signal, time, typer\n"
+        # a shell that starts the tests in the background has its children ignore the keyboard
+        "signal.signal(signal.SIGINT, signal.default_int_handler)\nfrom unpaired.cli import _with_exit_status\n"
         "def wait() -> None:\n    print('ready', flush=True)\n    time.sleep(60)\n"
         "app = typer.Typer()\napp.command()(_with_exit_status(wait))\napp([])"
     )

@@ -105,3 +105,12 @@ def test_an_anion_is_tested_for_stability_in_its_own_basis():
     assert state.engine["stability_note"] == ""
     formyl = molecule("C O H", [[0, 0, 0], [0, 0, 1.18], [0.94, 0, -0.6]])
     assert solve(Point(formyl, Level("UHF", "pcseg-1"))).engine["stability_note"] == "judged in pcseg-0"
+
+
+@pytest.mark.slow
+def test_pairs_that_break_the_symmetry_are_no_degenerate_state():
+    """NO3 in UHF: spins of about +0.9, +0.9 and -0.7 on three equal oxygens, <S^2> 1.44; its open shell alone is like E'."""
+    nitrate = molecule("N O O O", [[0, 0, 0], *(1.24 * TRIGON)])
+    state = state_of(nitrate, "UHF")
+    assert state.engine["degenerate"] == ""
+    assert state.engine["symmetry_broken"] is True

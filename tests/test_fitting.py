@@ -7,6 +7,12 @@ from pyscf import df, gto, lib, scf
 
 from unpaired.electronic import exchange, fitting, threeindex
 from unpaired.electronic.auxiliary import auxiliary_basis
+from unpaired.electronic.meanfield import mean_field
+from unpaired.electronic.mole import build_mole
+from unpaired.electronic.settings import settings
+from unpaired.level import Level
+from unpaired.molecule import Molecule
+from unpaired.point import Point
 
 SET = {element: auxiliary_basis("def2-universal-jkfit + free s, p", element) for element in "CHO"}
 
@@ -187,3 +193,15 @@ def test_distant_pairs_are_left_out_and_change_little():
     dm = np.eye(mole.nao)
     for mine, theirs in zip(ours.get_jk(dm), df.DF(mole, shells).get_jk(dm), strict=True):
         np.testing.assert_allclose(mine, theirs, atol=1e-6)
+
+
+def test_a_range_separated_functional_ends_in_double_precision():
+    """The library keeps a copy of the fitting for the long range: the rough stage must not stay in it."""
+    level = Level("UKS", "pcseg-0", "CAM-B3LYP")
+    formyl = Molecule(("C", "O", "H"), np.array([[0, 0, 0], [0, 0, 2.22], [1.77, 0, -1.12]]), 0, 2)
+    field = mean_field(build_mole(Point(formyl, level)), level, None, settings(level))
+    field.kernel()
+    grids, plain = field.grids, field.mol.UKS(xc="CAM-B3LYP").density_fit(auxbasis=field.with_df.auxbasis)
+    plain.grids, plain.conv_tol, plain.verbose = grids, 1e-10, 0
+    assert field.converged
+    assert field.e_tot == pytest.approx(plain.kernel(), abs=2e-8)

@@ -23,8 +23,6 @@ NH2 = Molecule(("N", "H", "H"), BENT, 0, 2)
         Level("UKS", "pcseg-1", "PBE"),
         Level("UKS", "pcseg-0", "B3LYP"),
         Level("ROKS", "pcseg-0", "B3LYP"),
-        Level("UKS", "pcseg-0", "TPSS"),
-        Level("UHF", "pcseg-0"),
     ],
     ids=lambda level: level.id,
 )

@@ -209,10 +209,10 @@ def broken_symmetry_flags(
 ) -> list[Flag]:
     """Nuclei that symmetry makes equivalent, but whose couplings differ: bad, unless the state is degenerate.
 
-    One component of a degenerate state must look like this; the mean over the symmetric set is the same for
-    every component.
+    One component of a Jahn-Teller state must look like this; the mean over the symmetric set is the same for every
+    component. A component of a degenerate state of a linear molecule has equal couplings at equal nuclei.
     """
-    degenerate = bool(state.engine.get("degenerate"))
+    degenerate = state.engine.get("degenerate") == "Jahn-Teller"
     flags = []
     for group in groups:
         values = [couplings_MHz[member] for member in group.members]

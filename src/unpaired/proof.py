@@ -154,6 +154,12 @@ def curvature_flags(lowest: Conformer) -> list[Flag]:
     if lowest.minimum is None and lowest.lowest_mode_cm is None:
         advice = "the curvature could not be checked: look at the story in record.json"
         return [Flag("curvature-unknown", "caution", advice)]
+    if lowest.minimum is None and abs(lowest.lowest_mode_cm or 0.0) >= FLAT_CM:
+        advice = (
+            "the lowest mode was not found closely enough to prove a minimum: look at the story in record.json, and "
+            "check the structure in a smaller basis set (unpaired structure --prove)"
+        )
+        return [Flag("curvature-unknown", "caution", advice, lowest.lowest_mode_cm)]
     if lowest.minimum is None:
         advice = (
             "the softest motion is so flat that the curvature proves nothing; couplings that depend on it "

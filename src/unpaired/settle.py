@@ -239,7 +239,7 @@ def _relaxed(work: _Work, begin: Sequence[Floats], origin: str, drawing: Drawing
 def _in_words(conformer: Conformer) -> str:
     if conformer.lowest_mode_cm is None:
         return "no vibrations" if conformer.minimum else "curvature not checked"
-    kind = {True: "minimum", False: "not a minimum", None: "flat, perhaps not a minimum"}[conformer.minimum]
+    kind = {True: "minimum", False: "not a minimum", None: "not proven to be a minimum"}[conformer.minimum]
     return f"{kind} (lowest mode {conformer.lowest_mode_cm:.0f} cm^-1)"
 
 

@@ -56,6 +56,7 @@ class Continuum(pcm.PCM):  # type: ignore[misc]
 
     def grad(self, dm: Array) -> Array:
         """Gradient (atoms, 3) of the energy of the charges for the total density matrix."""
+        self._get_vind(dm)  # the charges of this density, whatever was asked for last
         return np.asarray(self._attraction(dm) + grad_nuc(self, dm) + grad_solver(self, dm))
 
     def _attraction(self, dm: Array) -> Array:

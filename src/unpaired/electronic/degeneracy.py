@@ -21,7 +21,7 @@ MAPPED_BOHR = 0.3
 a Jahn-Teller distortion does not hide what it came from."""
 ORDERS = ((3, False), (4, False), (4, True), (5, False), (8, False), (8, True))
 """Operations tried, improper or not: each E or T species of the common point groups changes under one of them."""
-ROUND = 7
+ROUND = 5
 """Steps of a full turn about an axis of infinite order: pi, delta and phi orbitals all change by one step."""
 INVARIANT = 0.9
 """Overlap with its turned self from which a determinant or an orbital counts as unchanged; members of
@@ -29,6 +29,10 @@ degenerate species overlap with it by 0.81 at most about axes of order 3 to 6 (E
 DEGENERATE_SHARE = 0.8
 """Share of degenerate species in the changed orbitals, from which the state is degenerate and not merely broken: an
 orbital localised on one of three equal places has 0.67, on one of four 0.5, of six 0.67."""
+PAIRS_KEEP = 0.7
+"""Share of the open shell's overlap that the whole determinant must keep: pairs that break the symmetry lose more."""
+SHELL_LOST = 0.1
+"""Overlap of the open shell below which it says nothing of the pairs."""
 CUBIC = ("T", "Td", "Th", "O", "Oh", "I", "Ih")
 
 
@@ -36,7 +40,8 @@ def degeneracy(mole: Any, orbitals: Array, occupations: Array, overlap: Array) -
     """`atom`, `linear` or `Jahn-Teller` if the determinant is one of several of equal energy, else empty.
 
     Atoms and linear molecules: it changes when turned. Else: operations of order three or more carry the open shell
-    into other orbitals, and those are of degenerate species (E, T), not a mixture that breaks the symmetry.
+    into other orbitals, and those are of degenerate species (E, T), not a mixture that breaks the symmetry; the pairs
+    of electrons keep it.
     """
     from pyscf.symm import geom
 
@@ -70,7 +75,9 @@ def degeneracy(mole: Any, orbitals: Array, occupations: Array, overlap: Array) -
         signs = [np.ones(order)] + ([(-1.0) ** np.arange(order)] if order % 2 == 0 else [])
         plain = sum(sum(c * m for c, m in zip(sign, powers, strict=True)) / order for sign in signs)
         share = 1 - float(np.trace(changed.T @ plain @ changed)) / changed.shape[1]
-        if group in CUBIC or share > DEGENERATE_SHARE:
+        if group not in CUBIC and share <= DEGENERATE_SHARE:
+            continue
+        if _pairs_keep_symmetry(mole, orbitals, occupations, matrix, middle, abs(np.linalg.det(powers[1]))):
             return "Jahn-Teller"
     return ""
 
@@ -99,6 +106,18 @@ def _operations(mole: Any, cubic: bool, frame: Array) -> Iterator[tuple[Array, i
             apart[charges[:, None] != charges[None]] = np.inf
             if apart.min(axis=1).max() < MAPPED_BOHR:
                 yield matrix, order
+
+
+def _pairs_keep_symmetry(
+    mole: Any, orbitals: Array, occupations: Array, matrix: Array, middle: Any, shell: float
+) -> bool:
+    """Whether an operation changes no more of the determinant than its open shell, whose overlap is `shell`."""
+    spins = [
+        _determinant(mole, orbitals[k : k + 1], occupations[k : k + 1], matrix, middle) for k in range(2)
+    ]
+    if shell < SHELL_LOST:  # carried into its partner altogether: one spin shows whether the pairs stay
+        return max(spins) >= PAIRS_KEEP
+    return spins[0] * spins[1] >= PAIRS_KEEP * shell
 
 
 def _determinant(mole: Any, orbitals: Array, occupations: Array, matrix: Array, middle: Any) -> float:

@@ -57,6 +57,7 @@ class Fitting(df.DF):  # type: ignore[misc]
     def reset(self, mol: Any = None) -> Fitting:
         """Forgets integrals and densities."""
         self._integrals = self._anchor = None
+        self._rough = self._responding = False  # the library makes its range-separated copy by a reset
         super().reset(mol)
         return self
 
@@ -86,7 +87,10 @@ class Fitting(df.DF):  # type: ignore[misc]
 
     @contextmanager
     def responding(self) -> Iterator[None]:
-        """Meanwhile single precision does for matrices without orbitals: the response to a small change."""
+        """Meanwhile single precision does for matrices without orbitals: the response to a small change.
+
+        Those with orbitals are made in full: second order needs the block between virtual orbitals as it is.
+        """
         before, self._responding = self._responding, True
         try:
             yield
@@ -96,6 +100,8 @@ class Fitting(df.DF):  # type: ignore[misc]
     def forget(self) -> None:
         """The next exchange matrices are made in full and in double precision."""
         self._anchor = None
+        for part in self._rsh_df.values():
+            part.forget()
 
     def get_jk(
         self, dm: Any, hermi: int = 1, with_j: bool = True, with_k: bool = True,
@@ -108,6 +114,7 @@ class Fitting(df.DF):  # type: ignore[misc]
         """
         if omega is not None:
             with self.range_coulomb(omega) as part:
+                part._rough, part._responding = self._rough, self._responding
                 answer: tuple[Any, Any] = part.get_jk(dm, hermi, with_j, with_k, direct_scf_tol)
             return answer
         integrals = self.integrals()
@@ -125,7 +132,7 @@ class Fitting(df.DF):  # type: ignore[misc]
         bare = getattr(dm, "mo_coeff", None) is None
         if self._rough or (bare and self._responding):
             return whole(integrals, factors, np.float32)
-        if bare or any(np.any(n != 1) for _, n in factors):
+        if bare or self._responding or any(np.any(n != 1) for _, n in factors):
             return whole(integrals, factors)
         orbitals = [c for c, _ in factors]
         steps = self._anchor.distances(integrals, orbitals) if self._anchor is not None else None

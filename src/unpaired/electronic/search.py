@@ -86,8 +86,8 @@ def search(point: Point, field: Any, start: str, watch: Watch) -> Outcome:
             own.from_density(density_from_nuclei(field, start), start)
             if not own.found:
                 own.more_starts(lambda: _other_methods(point, field))
-        elif small and TROUBLED.intersection(suspicions):
-            own.more_starts(lambda: iter(()), thorough=True)
+        elif own.lowest.stable is False or (small and TROUBLED.intersection(suspicions)):
+            own.more_starts(lambda: iter(()), thorough=few)
     if not own.found:
         raise ConvergenceError("not converged: " + "; ".join(own.story))
     if not suspicions and first.starts > 1:
