@@ -157,8 +157,10 @@ def test_ctrl_c_leaves_finished_levels_and_status_130(folder: Path) -> None:
         "  - {scf: UKS, functional: B3LYP, basis: pcH-3, accuracy: reference}\n"
     )
     process = subprocess.Popen(
-        [sys.executable, "-m", "unpaired", "run", "long.yaml"], stderr=subprocess.PIPE, text=True, cwd=folder
-    )
+        [sys.executable, "-m", "unpaired", "run", "long.yaml"], stderr=subprocess.PIPE, text=True, cwd=folder,
+        # a shell that starts the tests in the background has its children ignore the keyboard
+        preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL),
+    )  # fmt: skip
     patience = time.monotonic() + 120
     while not list((folder / "results").glob(".store/*/state.json")) and time.monotonic() < patience:
         time.sleep(0.05)
