@@ -15,6 +15,7 @@ import numpy as np
 from . import diagnostics, solutions
 from .basis_errors import basis_error_flags
 from .constants import contact_coupling_MHz, mT_from_MHz
+from .electronic.threads import suited_to
 from .flag import Flag
 from .molecule import Molecule
 from .nuclei import isotope
@@ -47,7 +48,8 @@ def analyse(point: Point, state: State, groups: Sequence[Group], isotopes: Seque
         details={"story": list(state.story), "engine": dict(state.engine)},
     )
     add_couplings(part, point, state, groups)
-    origin = spin_origin(point, state, groups, isotopes)
+    with suited_to(state.basis_functions):
+        origin = spin_origin(point, state, groups, isotopes)
     add_origin(part, origin)
     part.flags += diagnostics.parts_flags(point, origin.weakest_pair)
     part.flags += solutions.state_flags(point, state)
