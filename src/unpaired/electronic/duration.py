@@ -16,7 +16,7 @@ import numpy as np
 from ..errors import ChoiceError
 from ..molecule import Molecule
 from ..point import Point
-from .search import SCOUT_BASIS, SCOUT_FROM, SCOUT_SHARE, SMALL_ATOMS
+from .search import FEW_ATOMS, SCOUT_BASIS, SCOUT_FROM, SCOUT_SHARE, SMALL_ATOMS
 from .settings import SCOUT, settings
 from .sizes import Sizes, basis_functions, keeps_exact_integrals, sizes
 from .threads import SEVERAL_THREADS_FROM, suited_to, thread_count
@@ -54,11 +54,12 @@ ITERATIONS = 10
 COARSE_ITERATIONS = 8
 STABILITY = 1.1
 """For the stability test beside the one calculation."""
-DIATOMIC_STARTS, HARD_DIATOMIC_STARTS = 10.0, 35.0
-"""Other starts of every molecule of two atoms, and of those whose first answer is sure to be contaminated."""
+DIATOMIC_STARTS, HARD_STARTS = 10.0, 35.0
+"""Other starts of every molecule of two atoms, and of those of two or three whose first answer is sure to be
+contaminated (CN, NO2)."""
 ALL_STARTS, SOME_STARTS, FEW_STARTS = 7.0, 2.5, 0.5
 """Other starts where all are expected; the middle of none and all where it is not known; where none are likely."""
-MULTIPLE_BOND_BOHR = {"CC": 2.70, "CN": 2.60, "NN": 2.40}
+MULTIPLE_BOND_BOHR = {"CC": 2.70, "CN": 2.60, "NN": 2.40, "NO": 2.35}
 """Atoms nearer than this to one another share more than two electrons, and then UHF is contaminated."""
 START_SECONDS, FUNCTIONAL_START_SECONDS = 0.2, 0.3
 """Of one start in the scout's basis, beside its multiplications; the second with a density functional."""
@@ -80,8 +81,10 @@ def _expected_starts(point: Point) -> float:
         return 0.0
     unsaturated = _has_multiple_bond(molecule)
     hard = point.level.scf == "UHF" and unsaturated
+    if hard and len(molecule.elements) <= FEW_ATOMS:
+        return HARD_STARTS
     if len(molecule.elements) <= SMALL_ATOMS or point.level.solution is not None:
-        return HARD_DIATOMIC_STARTS if hard else DIATOMIC_STARTS
+        return DIATOMIC_STARTS
     if unsaturated and molecule.charge < 0:  # another orbital is near for the electron, whatever the method
         return ALL_STARTS
     if point.level.scf == "UHF":
@@ -90,11 +93,11 @@ def _expected_starts(point: Point) -> float:
 
 
 def _has_multiple_bond(molecule: Molecule) -> bool:
-    places = [place for place, element in enumerate(molecule.elements) if element in ("C", "N")]
+    places = [place for place, element in enumerate(molecule.elements) if element in ("C", "N", "O")]
     for one, other in itertools.combinations(places, 2):
         kind = "".join(sorted(molecule.elements[one] + molecule.elements[other]))
         apart_bohr = float(np.linalg.norm(molecule.coordinates_bohr[one] - molecule.coordinates_bohr[other]))
-        if apart_bohr < MULTIPLE_BOND_BOHR[kind]:
+        if apart_bohr < MULTIPLE_BOND_BOHR.get(kind, 0.0):
             return True
     return False
 
