@@ -25,7 +25,7 @@ SLOW_RATE = 34e9
 """Flop/s of matrix multiplication of the one core on which the seconds below were measured, one thread."""
 
 # Seconds on that core, each fitted to measured stages of methyl, allyl and benzyl.
-SECONDS_START, FUNCTIONAL_SECONDS = 1.2, 0.4
+SECONDS_START, FUNCTIONAL_SECONDS = 0.75, 0.4
 """Loading the libraries, and those of density functionals."""
 SECONDS_PER_FITTED_INTEGRAL = 9.0e-8
 SECONDS_PER_EXACT_INTEGRAL = 1.1e-7
@@ -57,7 +57,7 @@ STABILITY = 1.1
 DIATOMIC_STARTS, HARD_STARTS = 10.0, 35.0
 """Other starts of every molecule of two atoms, and of those of two or three whose first answer is sure to be
 contaminated (CN, NO2)."""
-ALL_STARTS, SOME_STARTS, FEW_STARTS = 7.0, 2.5, 0.5
+ALL_STARTS, SOME_STARTS, FEW_STARTS = 9.0, 2.5, 0.5
 """Other starts where all are expected; the middle of none and all where it is not known; where none are likely."""
 MULTIPLE_BOND_BOHR = {"CC": 2.70, "CN": 2.60, "NN": 2.40, "NO": 2.35}
 """Atoms nearer than this to one another share more than two electrons, and then UHF is contaminated."""
